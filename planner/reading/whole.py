@@ -1,0 +1,155 @@
+"""What can be said only of the study as a whole: names, circles, timing, prices, strengths."""
+
+from collections.abc import Mapping, Sequence
+from graphlib import TopologicalSorter
+from math import ceil, sqrt
+
+from costs.circles import circles
+from costs.located import Located
+from costs.prices import PriceList
+from planner.reading.variables import DrawnVariable
+from planner.strengths import explained_shares, loadings
+from planner.study import Effect, HiddenCause, Range
+
+__all__ = [
+    "check_arrows",
+    "check_measurable",
+    "check_priced",
+    "check_strengths",
+    "check_timing",
+    "read_effect",
+    "read_selected",
+]
+
+Drawn = Mapping[str, DrawnVariable]
+ALMOST_ALL = 1 - 1e-9
+"""A share of explained variance above this counts as all of it: rounding forgiven."""
+
+
+def read_effect(place: Located, drawn: Drawn, prices: PriceList) -> Effect | None:
+    """Return the effect that is asked for; both ends are known, different and measurable."""
+    found = place.entries(("treatment", "outcome"))
+    names = {}
+    for role in ("treatment", "outcome"):
+        if role not in found:
+            place.fault(f"names no {role}.", "Write it like {treatment: first, outcome: second}.")
+        elif (name := known_variable(found[role], drawn)) is not None:
+            names[role] = name
+            if name not in prices.ways:
+                mend = "Give it a way of measuring: no study can do without."
+                found[role].fault(f"'{name}' is the {role}, and cannot be measured.", mend)
+    if len(names) < 2:
+        return None
+    if names["treatment"] == names["outcome"]:
+        place.fault("names one variable as treatment and as outcome.", "Name two variables.")
+        return None
+    return Effect(**names)
+
+
+def read_selected(place: Located, drawn: Drawn) -> tuple[str, ...]:
+    """Return the variables that have one and the same value in every row."""
+    names = place.names()
+    return tuple(name for name, each in names.items() if known_variable(each, drawn) is not None)
+
+
+def known_variable(place: Located, drawn: Drawn) -> str | None:
+    """Return the name of a variable of the diagram."""
+    name = place.name()
+    if name is not None and name not in drawn:
+        place.fault(
+            f"names the variable '{name}', which is not there.", place.source.nearest(name, drawn)
+        )
+        return None
+    return name
+
+
+def check_priced(places: Mapping[str, Located], drawn: Drawn) -> None:
+    """Say which variables of the price lists are not in the diagram."""
+    for name, place in places.items():
+        if name not in drawn:
+            mend = place.source.nearest(name, drawn)
+            place.fault(f"measures '{name}', which is no variable of the study.", mend)
+
+
+def check_measurable(drawn: Drawn, prices: PriceList) -> None:
+    """Say which variables have neither a way nor the word that they have none, or both."""
+    for name, each in drawn.items():
+        if name in prices.ways and each.measurable is False:
+            each.place.fault(
+                "has a way of measuring, but says 'measurable: no'.", "Take one of the two out."
+            )
+        if name not in prices.ways and each.measurable is not False:
+            mend = (
+                "Give it 'per_unit' (0 if free), list it under 'prices', or write 'measurable: no'."
+            )
+            each.place.fault("has no price and no way of measuring.", mend)
+
+
+def check_arrows(drawn: Drawn) -> list[str] | None:
+    """Say which causes are unknown and which arrows run in a circle.
+
+    Returns
+    -------
+    list or None
+        Every variable, causes before their effects; None where that cannot be.
+    """
+    for each in drawn.values():
+        for cause, place in each.cause_places.items():
+            if cause not in drawn:
+                mend = place.source.nearest(cause, drawn)
+                place.fault(f"names the cause '{cause}', which is no variable.", mend)
+    before = {name: [c for c in each.cause_places if c in drawn] for name, each in drawn.items()}
+    found = circles(before)
+    for circle in found:
+        place = drawn[circle[1]].cause_places[circle[0]]
+        place.fault(
+            f"closes a circle: {' → '.join(circle)}.",
+            "A cause cannot follow from its effect: take one of these arrows out.",
+        )
+    return None if found else list(TopologicalSorter(before).static_order())
+
+
+def check_timing(drawn: Drawn) -> None:
+    """Say which causes come later than their effect."""
+    for name, each in drawn.items():
+        for cause, place in each.cause_places.items():
+            earlier = drawn[cause].variable.when if cause in drawn else None
+            later = each.variable.when
+            if earlier is not None and later is not None and earlier > later:
+                place.fault(
+                    f"'{cause}' (when {float(earlier):g}) comes later than '{name}' (when {float(later):g}), which it causes.",
+                    "Correct one of the two times, or turn the arrow round.",
+                )
+
+
+def check_strengths(
+    drawn: Drawn, hidden: Sequence[HiddenCause], default: Range | None, order: Sequence[str]
+) -> None:
+    """Say which variables are explained to 100 % or more, and what factor would fit."""
+    causes = {name: coefficients(each, default) for name, each in drawn.items()}
+    for cause in hidden:
+        both = likely(cause.strength)
+        # An arrow without a strength of its own takes the default, and these arrows are no others.
+        pair = (likely(default), likely(default)) if both is None else loadings(both)
+        causes[cause.name] = {}
+        for name, loading in zip(cause.of, pair, strict=True):
+            causes[name] = {**causes[name], cause.name: loading}
+    names = [cause.name for cause in hidden] + list(order)
+    for name, share in explained_shares(causes, names).items():
+        if share > ALMOST_ALL:
+            # The largest factor of three decimals that leaves some noise.
+            factor = (ceil(1000 / sqrt(share) - 1e-9) - 1) / 1000
+            drawn[name].place.fault(
+                f"is explained to {100 * share:.1f} % by its causes, and less than 100 % is possible.",
+                f"Multiply the strengths of all arrows into it by {factor:g} or less.",
+            )
+
+
+def coefficients(each: DrawnVariable, default: Range | None) -> Mapping[str, float | None]:
+    """Return the likely strength of each arrow into a variable; None where it has none."""
+    return {cause: likely(strength or default) for cause, strength in each.variable.causes.items()}
+
+
+def likely(strength: Range | None) -> float | None:
+    """Return the single number of a range."""
+    return None if strength is None else strength.likely

@@ -1,0 +1,146 @@
+"""The study as plain, frozen data: what is asked, the diagram's arrows, what can be bought."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from datetime import date
+from fractions import Fraction
+
+from costs.prices import PriceList, Terms
+
+__all__ = [
+    "HIDDEN",
+    "ClusterDesign",
+    "Effect",
+    "HiddenCause",
+    "PriceSource",
+    "Range",
+    "Study",
+    "Tolerance",
+    "Variable",
+]
+
+HIDDEN = "hidden common cause of "
+"""How the name of a common cause that has none of its own begins."""
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class Effect:
+    """The effect that is asked for."""
+
+    treatment: str
+    outcome: str
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class Range:
+    """A number that is known as a range; a plain number is a range of no width."""
+
+    low: float
+    likely: float
+    """What is used where a single number is wanted."""
+    high: float
+
+    def __post_init__(self) -> None:
+        assert self.low <= self.likely <= self.high, "a range runs upwards"
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class Variable:
+    """A node of the diagram."""
+
+    name: str
+    label: str = ""
+    causes: Mapping[str, Range | None]
+    """The variables with an arrow into this one, and how strong it is; None where unknown."""
+    when: Fraction | None = None
+    """When it is set or read; a cause is never later than its effect."""
+    sd: float | None = None
+    """Standard deviation in natural units."""
+    share: float | None = None
+    """For a yes/no variable, the share of yes."""
+    care: bool = False
+    """Measuring it can hurt someone, whichever way is taken."""
+    texts: Mapping[str, str] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class HiddenCause:
+    """An unmeasurable common cause of two variables that needs no name of its own."""
+
+    of: tuple[str, str]
+    strength: Range | None = None
+    """The correlation that it induces."""
+
+    @property
+    def name(self) -> str:
+        """Its name as a node of the diagram."""
+        return f"{HIDDEN}{self.of[0]} and {self.of[1]}"
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class Tolerance:
+    """What the user will put up with."""
+
+    least_reliability: Fraction | None = None
+    bias: float | None = None
+    first_stage_f: float | None = None
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class ClusterDesign:
+    """Units come in clusters: how many in each, and how alike they are in one."""
+
+    holds: float
+    icc_treatment: float
+    icc_outcome: float
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class PriceSource:
+    """A price-list file that was read."""
+
+    path: str
+    digest: str
+    valid_until: date | None
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class Study:
+    """All that a study file and its price lists say, checked."""
+
+    title: str
+    unit: str
+    """What one row of the data is."""
+    currency: str
+    """Empty where none is named."""
+    effects: tuple[Effect, ...]
+    variables: Mapping[str, Variable]
+    """By name, in the order of the file."""
+    hidden_causes: tuple[HiddenCause, ...] = ()
+    prices: PriceList
+    """Ways of the study's variables only; a variable without one cannot be measured."""
+    terms: Terms
+    budget: Fraction | None = None
+    frame_size: int | None = None
+    tolerance: Tolerance = Tolerance()
+    design_effect: float | Mapping[str, float] | ClusterDesign = 1.0
+    """One number, one for each route, or what it follows from."""
+    default_strength: Range | None = None
+    """The strength of arrows that have none of their own."""
+    routes: tuple[str, ...]
+    """The routes that may be taken, in their usual order."""
+    selected_by: tuple[str, ...] = ()
+    """Variables that have one and the same value in every row."""
+    waves: tuple[str, ...] = ()
+    path: str = ""
+    digest: str = ""
+    price_sources: tuple[PriceSource, ...] = ()
+    changes: tuple[str, ...] = ()
+    """What was asked for on the command line in place of what the files say."""
+
+    @property
+    def is_lossless(self) -> bool:
+        """Whether every unit started is taken to give a usable record."""
+        ways = [way for named in self.prices.ways.values() for way in named.values()]
+        yields = [each.yields for each in (*ways, *self.prices.components.values())]
+        return self.terms.usable == 1 and all(share == 1 for share in yields)

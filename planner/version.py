@@ -1,0 +1,5 @@
+"""The version of the tool, as answers state it."""
+
+__all__ = ["VERSION"]
+
+VERSION = "0.1"
