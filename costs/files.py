@@ -1,7 +1,6 @@
 """Opening the files that the user named, and nothing else: bytes, text and the tree of a YAML file."""
 
 import hashlib
-from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -17,7 +16,7 @@ LARGEST_FILE = 10_000_000
 MOST_VALUES = 1_000_000
 """Values in a file once its aliases are written out; a file of the largest size holds fewer."""
 START = Spot(1, 1)
-PLAIN_TAGS = frozenset(
+PLAIN_TAGS = frozenset(["!"]) | frozenset(
     f"tag:yaml.org,2002:{kind}"
     for kind in ("str", "int", "float", "bool", "null", "timestamp", "merge", "value", "seq", "map")
 )
@@ -73,88 +72,126 @@ def yaml_tree(file: NamedFile, faults: Faults) -> Located | None:
     text = text_of(file, faults)
     if text is None:
         return None
+    builder = TreeBuilder(file.path, faults)
     try:
-        root = yaml.compose(text, Loader=Loader)
-        if root is None:
-            faults.add(
-                fault_of(
-                    file.path, START, "is empty.", "'measurewise new' writes a study to fill in."
-                )
-            )
-            return None
-        node, values = converted(root, {})
+        for event in yaml.parse(text, Loader=Loader):
+            builder.take(event)
     except yaml.YAMLError as error:
         faults.add(syntax_fault(file.path, text, error))
         return None
-    except RecursionError:
+    except RecursionError:  # where PyYAML has no libyaml to refuse it
+        wrong = "nests its values too deeply."
+        faults.add(fault_of(file.path, START, wrong, "No key needs more than eight levels."))
+        return None
+    root = builder.root
+    if root is None:
+        wrong = "is empty."
         faults.add(
-            fault_of(
-                file.path,
-                START,
-                "nests its values too deeply.",
-                "No key needs more than eight levels.",
-            )
+            fault_of(file.path, START, wrong, "'measurewise new' writes a study to fill in.")
         )
         return None
-    if values > MOST_VALUES:
+    if builder.values > MOST_VALUES:
         wrong = f"stands for more than {MOST_VALUES:,} values once its aliases are written out."
         faults.add(fault_of(file.path, START, wrong, "Write the entries without aliases."))
         return None
-    source = Source(str(file.path), faults)
-    for tagged in tags(root):
-        faults.add(tag_fault(file.path, tagged))
-    return Located(node, "", source)
+    return Located(root, "", Source(str(file.path), faults))
 
 
-def converted(node: yaml.Node, done: dict[int, tuple[Node, int]]) -> tuple[Node, int]:
-    """Return the tree of a YAML node, and how many values it stands for.
+class Unfinished:
+    """A list or a mapping whose end has not been read yet."""
 
-    An alias gives the same node again, which is converted once and counted each time: a file of
-    nested aliases costs no more than its length.
+    __slots__ = ("anchor", "is_mapping", "parts", "spot", "values")
+
+    def __init__(self, event: yaml.CollectionStartEvent) -> None:
+        self.spot = spot_of(event)
+        self.anchor: str | None = event.anchor
+        self.is_mapping = isinstance(event, yaml.MappingStartEvent)
+        self.parts: list[Node] = []
+        """Items, or keys and values in turn."""
+        self.values = 1
+        """How many values it stands for so far, aliases written out."""
+
+    def node(self) -> Node:
+        """Return the node, now that all of it has been read."""
+        parts = tuple(self.parts)
+        if self.is_mapping:
+            return Entries(self.spot, tuple(zip(parts[::2], parts[1::2], strict=True)))
+        return Items(self.spot, parts)
+
+
+class TreeBuilder:
+    """Builds the tree of a file from the events of the YAML reader.
+
+    An alias gives the same node again and counts it anew, so that a file of nested aliases costs no
+    more than its length. No tag is ever followed: a study is data, never code.
     """
-    if id(node) in done:
-        return done[id(node)]
-    spot = Spot(node.start_mark.line + 1, node.start_mark.column + 1)
-    match node:
-        case yaml.ScalarNode():
-            result: tuple[Node, int] = Scalar(spot, node.value, node.style is None), 1
-        case yaml.SequenceNode():
-            items = [converted(item, done) for item in node.value]
-            result = (
-                Items(spot, tuple(item for item, _ in items)),
-                1 + sum(count for _, count in items),
-            )
-        case _:
-            pairs = [(converted(key, done), converted(value, done)) for key, value in node.value]
-            result = (
-                Entries(spot, tuple((key, value) for (key, _), (value, _) in pairs)),
-                1 + sum(one + other for (_, one), (_, other) in pairs),
-            )
-    done[id(node)] = result
-    return result
+
+    def __init__(self, path: Path, faults: Faults) -> None:
+        self._path = path
+        self._faults = faults
+        self._open: list[Unfinished] = []
+        self._anchors: dict[str, tuple[Node, int]] = {}
+        self._documents = 0
+        self.root: Node | None = None
+        self.values = 0
+
+    def take(self, event: yaml.Event) -> None:
+        """Take one event."""
+        match event:
+            case yaml.ScalarEvent():
+                self._look_at_tag(event)
+                scalar = Scalar(spot_of(event), event.value, event.style is None)
+                self._add(scalar, 1, event.anchor)
+            case yaml.CollectionStartEvent():
+                self._look_at_tag(event)
+                self._open.append(Unfinished(event))
+            case yaml.CollectionEndEvent():
+                done = self._open.pop()
+                self._add(done.node(), done.values, done.anchor)
+            case yaml.AliasEvent():
+                self._add_alias(event)
+            case yaml.DocumentStartEvent():
+                self._documents += 1
+                if self._documents == 2:
+                    wrong = "holds a second document, after '---'."
+                    self._say(event, wrong, "Put each study into a file of its own.")
+            case _:
+                pass
+
+    def _add(self, node: Node, values: int, anchor: str | None) -> None:
+        if anchor is not None:
+            self._anchors[anchor] = node, values
+        if self._open:
+            self._open[-1].parts.append(node)
+            self._open[-1].values += values
+        elif self._documents == 1 and not (isinstance(node, Scalar) and node.is_empty):
+            self.root, self.values = node, values
+
+    def _add_alias(self, event: yaml.AliasEvent) -> None:
+        anchor = event.anchor or ""
+        if anchor in self._anchors:
+            self._add(*self._anchors[anchor], None)
+            return
+        wrong = f"uses '*{shortened(anchor)}', which stands for nothing before it."
+        self._say(event, wrong, "Write the value itself.")
+        self._add(Scalar(spot_of(event), ""), 1, None)
+
+    def _look_at_tag(self, event: yaml.ScalarEvent | yaml.CollectionStartEvent) -> None:
+        tag = event.tag
+        if tag is not None and tag not in PLAIN_TAGS:
+            shown = shortened(tag.replace("tag:yaml.org,2002:", "!!"))
+            wrong = f"carries the tag '{shown}': a study is data, never code."
+            self._say(event, wrong, "Leave the tag out.")
+
+    def _say(self, event: yaml.Event, wrong: str, mend: str) -> None:
+        self._faults.add(fault_of(self._path, spot_of(event), wrong, mend))
 
 
-def tags(root: yaml.Node) -> Iterator[yaml.Node]:
-    """Return every node with a tag that is no plain value, such as ``!!python/object``."""
-    stack, seen = [root], {id(root)}
-    while stack:
-        node = stack.pop()
-        if node.tag not in PLAIN_TAGS:
-            yield node
-        below = node.value if isinstance(node, yaml.SequenceNode) else ()
-        if isinstance(node, yaml.MappingNode):
-            below = [each for pair in node.value for each in pair]
-        for each in below:
-            if id(each) not in seen:
-                seen.add(id(each))
-                stack.append(each)
-
-
-def tag_fault(path: Path, node: yaml.Node) -> Fault:
-    """Word a tag that asks for more than data."""
-    tag = shortened(node.tag.replace("tag:yaml.org,2002:", "!!"))
-    wrong = f"carries the tag '{tag}': a study is data, never code."
-    return fault_of(path, Spot(node.start_mark.line + 1), wrong, "Leave the tag out.")
+def spot_of(event: yaml.Event) -> Spot:
+    """Return where an event begins."""
+    mark = event.start_mark
+    assert mark is not None, "the reader marks every event"
+    return Spot(mark.line + 1, mark.column + 1)
 
 
 def syntax_fault(path: Path, text: str, error: yaml.YAMLError) -> Fault:

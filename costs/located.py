@@ -12,10 +12,21 @@ from decimal import Decimal
 from difflib import get_close_matches
 from fractions import Fraction
 from types import MappingProxyType
+from typing import NamedTuple
 
 from costs.faults import Fault, Faults, Spot
 
-__all__ = ["Entries", "Items", "Located", "Node", "Scalar", "Source", "listed", "shortened"]
+__all__ = [
+    "Entries",
+    "Items",
+    "Located",
+    "Node",
+    "Scalar",
+    "Source",
+    "listed",
+    "nearest",
+    "shortened",
+]
 
 LARGEST_EXPONENT = 14
 """No number of 10^15 or more is read: it is a slip of the keyboard, or meant to do harm."""
@@ -27,8 +38,7 @@ EMPTY = frozenset({"", "~", "null", "Null", "NULL"})
 FLAGS = {"yes": True, "true": True, "no": False, "false": False}
 
 
-@dataclass(frozen=True, slots=True)
-class Scalar:
+class Scalar(NamedTuple):
     """A single value, as the text that was written."""
 
     spot: Spot
@@ -42,16 +52,14 @@ class Scalar:
         return self.plain and self.text in EMPTY
 
 
-@dataclass(frozen=True, slots=True)
-class Items:
+class Items(NamedTuple):
     """A list of values."""
 
     spot: Spot
     items: tuple["Node", ...]
 
 
-@dataclass(frozen=True, slots=True)
-class Entries:
+class Entries(NamedTuple):
     """A mapping, its pairs in the order of the file; a key may stand twice."""
 
     spot: Spot
@@ -74,11 +82,7 @@ class Source:
         """Return the known name that ``name`` may have been meant for, as a hint."""
         if not self.faults.allow_comparisons(len(known)):
             return "Correct the name, or add what it stands for."
-        folded = {each.casefold(): each for each in known}
-        near = get_close_matches(name.casefold(), folded, n=1)
-        if near:
-            return f"Did you mean '{shortened(folded[near[0]])}'?"
-        return f"Known here: {listed(known)}." if known else "Nothing is known here yet."
+        return nearest(name, known)
 
 
 @dataclass(frozen=True, slots=True)
@@ -357,8 +361,25 @@ class Located:
         return Decimal(text)
 
 
+def nearest(name: str, known: Collection[str]) -> str:
+    """Return a hint at the known name that is nearest to ``name``.
+
+    Examples
+    --------
+    >>> nearest("per_unt", ["per_unit", "setup"])
+    "Did you mean 'per_unit'?"
+    """
+    folded = {each.casefold(): each for each in known}
+    near = get_close_matches(name.casefold(), folded, n=1)
+    if near:
+        return f"Did you mean '{shortened(folded[near[0]])}'?"
+    return f"Known here: {listed(known)}." if known else "Nothing is known here yet."
+
+
 def shortened(text: str, most: int = 60) -> str:
     """Return the text on one line, cut where it is longer than ``most`` characters."""
+    if len(text) <= most and text.isprintable():
+        return text
     line = "".join(char if char.isprintable() else " " for char in text)
     return line if len(line) <= most else f"{line[: most - 1]}…"
 

@@ -343,7 +343,7 @@ def route_answer(question: Question, claim: Claim, best: Answer | NothingFound) 
     if reason is not None:
         return RouteAnswer(route=claim.route, status="impossible", reason=reason)
     answer = best
-    if isinstance(best, Answer) and best.opened[0][0] is not claim or not best.proved:
+    if (isinstance(best, Answer) and best.opened[0][0] is not claim) or not best.proved:
         question.report(ROUTES[claim.route].words.title)
         answer = search(question, claim)
     if isinstance(answer, NothingFound):

@@ -10,8 +10,8 @@ __all__ = ["MOST_COVARIANCES", "WORDS", "explained_shares", "loadings"]
 
 WORDS = {"weak": 0.1, "moderate": 0.3, "strong": 0.5}
 """Strengths in words, after Cohen (1988), Statistical Power Analysis, for correlations; from memory."""
-MOST_COVARIANCES = 400_000
-"""Covariances worked out before the check gives up: about a second."""
+MOST_COVARIANCES = 60_000
+"""Covariances worked out before the check gives up, after about a third of a second."""
 
 Causes = Mapping[str, Mapping[str, float | None]]
 
@@ -28,7 +28,7 @@ def loadings(strength: float) -> tuple[float, float]:
     return root, root if strength >= 0 else -root
 
 
-def explained_shares(causes: Causes, order: Sequence[str]) -> dict[str, float]:
+def explained_shares(causes: Causes, order: Sequence[str]) -> dict[str, float | None]:
     """Return the share of each variable's variance that its causes explain, where that is known.
 
         explained_v = Σ_p Σ_q b_vp · b_vq · Cov(p, q)
@@ -43,21 +43,20 @@ def explained_shares(causes: Causes, order: Sequence[str]) -> dict[str, float]:
     Returns
     -------
     dict
-        Variables without a cause, or for which a coefficient that matters is unknown, are left out.
+        Variables without a cause, or for which a coefficient that matters is unknown, are left out;
+        None stands where it would take too long to say.
     """
     covariances = Covariances(causes, order)
-    shares = {}
+    shares: dict[str, float | None] = {}
     for name in order:
         known = [(cause, b) for cause, b in causes[name].items() if b is not None]
-        if known and len(known) == len(causes[name]):
-            terms = [
-                b * c * cov
-                for p, b in known
-                for q, c in known
-                if (cov := covariances.between(p, q)) is not None
-            ]
-            if len(terms) == len(known) ** 2:
-                shares[name] = sum(terms)
+        if not known or len(known) < len(causes[name]):
+            continue
+        terms = [(b * c, covariances.between(p, q)) for p, b in known for q, c in known]
+        if all(covariance is not None for _, covariance in terms):
+            shares[name] = sum(product * (covariance or 0) for product, covariance in terms)
+        elif covariances.gave_up:
+            shares[name] = None
     return shares
 
 
@@ -68,6 +67,11 @@ class Covariances:
         self._causes = causes
         self._rank = {name: rank for rank, name in enumerate(order)}
         self._known: dict[tuple[str, str], float | None] = {}
+
+    @property
+    def gave_up(self) -> bool:
+        """Whether there were too many to work out."""
+        return len(self._known) > MOST_COVARIANCES
 
     def between(self, a: str, b: str) -> float | None:
         """Return Cov(a, b); None where a coefficient that it hangs on is unknown.
@@ -80,7 +84,7 @@ class Covariances:
         stack = [self._pair(a, b)]
         while stack:
             earlier, later = pair = stack[-1]
-            if pair in self._known or len(self._known) > MOST_COVARIANCES:
+            if pair in self._known or self.gave_up:
                 stack.pop()
                 continue
             pairs = [self._pair(earlier, cause) for cause in self._causes[later]]

@@ -132,6 +132,8 @@ class Study:
     selected_by: tuple[str, ...] = ()
     """Variables that have one and the same value in every row."""
     waves: tuple[str, ...] = ()
+    unchecked_strengths: int = 0
+    """Variables of which it would take too long to say whether they are explained to 100 %."""
     path: str = ""
     digest: str = ""
     price_sources: tuple[PriceSource, ...] = ()

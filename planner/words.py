@@ -11,25 +11,27 @@ __all__ = ["conjoined", "drawn", "estimand", "leans_on", "sentence"]
 
 SHARED = {
     # Why a variable is measured.
-    "treatment": "is the treatment",
-    "outcome": "is the outcome",
+    "treatment": "the treatment: the cause that is asked about",
+    "outcome": "the outcome: what it may change",
     "closes": "closes {path}",
-    "keeps_link": "keeps the link {path} open",
-    "moves": "moves the treatment: {path}",
+    "keeps_link": "keeps open what the instrument acts by, {path}",
+    "moves": "moves the treatment, {path}",
     "carries": "carries {path}",
     # Why a variable is left out.
-    "on_causal_path": "lies on the causal path {path}; holding it would take part of the effect away",
-    "below_causal_path": "follows from the causal path, {path}; holding it would distort the effect",
+    "on_causal_path": "lies on the way of the effect, {path}; adjusting for it would take part of"
+    " the effect away",
+    "below_causal_path": "follows from what the treatment changes, {path}; adjusting for it would"
+    " distort the effect",
     "after_treatment": "follows from the treatment, {path}",
-    "opens": "holding it would open {path}",
-    "cuts_link": "holding it would cut the link {path}",
-    "unlinked": "no open path joins it with {others}",
-    "shielded": "{others}, which is held, closes {path}",
+    "opens": "adjusting for it would open {path}, which is closed as it is",
+    "cuts_link": "adjusting for it would cut what the instrument acts by, {path}",
+    "unlinked": "no path along which it could mislead leads to {others}",
+    "shielded": "adjusting for {others} already closes {path}",
     "selected": "has one and the same value in every row",
     # Why a whole route, or all of them, cannot be taken.
     "no_directed_path": "No directed path leads from {treatment} to {outcome}: by this diagram the"
     " effect is zero. Nine times in ten an arrow was forgotten.",
-    "selection_after_treatment": "The rows are selected after the treatment, by {path}: no analysis of"
+    "selection_after_treatment": "The rows are selected after the treatment, {path}: no analysis of"
     " the selected rows alone gives the effect.",
     "over_limits": "The route is open, but only beyond {all}.",
     "out_of_time": "No plan within the limits was found in the time given, and none was ruled out.",

@@ -57,7 +57,10 @@ class Criteria:
         self.after = nx.descendants(graph, x) | {x}
         up = nx.ancestors(graph, y) | {y}
         self.causal = (self.after - {x}) & up
-        self.forbidden = set().union(*(nx.descendants(graph, c) | {c} for c in self.causal)) | {x, y}
+        self.forbidden = set().union(*(nx.descendants(graph, c) | {c} for c in self.causal)) | {
+            x,
+            y,
+        }
         self.noncausal = graph.copy()
         self.noncausal.remove_edges_from([(x, c) for c in graph.successors(x) if c in up])
         self.without_x = self._without({x})
@@ -157,11 +160,17 @@ class Bills:
         """One purchase for so many units started."""
         reach = prod(Fraction(str(self.components[n].get("yields", 1))) for n in self.needs(entry))
         count = ceil(started * reach)
-        line = Fraction(str(entry.get("setup", 0))) + Fraction(str(entry.get("per_unit", 0))) * count
+        line = (
+            Fraction(str(entry.get("setup", 0))) + Fraction(str(entry.get("per_unit", 0))) * count
+        )
         if "batch" in entry:
-            line += Fraction(str(entry["batch"]["price"])) * ceil(count / Fraction(entry["batch"]["holds"]))
+            line += Fraction(str(entry["batch"]["price"])) * ceil(
+                count / Fraction(entry["batch"]["holds"])
+            )
         for burden, taken in entry.get("takes", {}).items():
-            line += Fraction(str(self.study["burdens"][burden]["price"])) * Fraction(str(taken)) * count
+            line += (
+                Fraction(str(self.study["burdens"][burden]["price"])) * Fraction(str(taken)) * count
+            )
         return line
 
 

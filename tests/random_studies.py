@@ -9,13 +9,15 @@ NAMES = "abcdefgh"
 
 
 def random_study(seed: int) -> dict[str, Any]:
-    """A study of at most seven candidates, with components, ways, yields, batches and limits.
+    """A small study, with components, ways, yields, batches and limits.
 
     Seeds take turns in what the diagram is made to ask for: several covariates, an instrument that
     needs some, a mechanism that needs company. Arrows are then added at random.
     """
     rng = random.Random(seed)
     arrows, unmeasurable, hidden = DIAGRAMS[seed % len(DIAGRAMS)](rng)
+    if rng.random() < 0.2:
+        arrows |= {("x", "g"), ("c", "g")}
     names = sorted({name for arrow in arrows for name in arrow} | {"x", "y"})
     order = topological(names, arrows)
     for tail, head in pairs(order):
@@ -30,7 +32,7 @@ def random_study(seed: int) -> dict[str, Any]:
         if name in unmeasurable:
             variables[name]["measurable"] = "no"
         else:
-            ways = rng.choice([1, 1, 2])
+            ways = rng.choice([1, 2, 2])
             variables[name]["ways"] = {f"w{i}": random_way(rng, components) for i in range(ways)}
     study: dict[str, Any] = {
         "title": f"Random study {seed}",
@@ -92,8 +94,11 @@ def random_components(rng: random.Random) -> dict[str, Any]:
 
 def random_way(rng: random.Random, components: dict[str, Any]) -> dict[str, Any]:
     """A way of measuring, which may need components."""
-    way: dict[str, Any] = {"per_unit": price(rng, 8), "reliability": rng.choice(["1", "0.9", "0.5"])}
-    if rng.random() < 0.6:
+    way: dict[str, Any] = {
+        "per_unit": price(rng, 8),
+        "reliability": rng.choice(["1", "0.9", "0.5"]),
+    }
+    if rng.random() < 0.7:
         way["needs"] = sorted({rng.choice(list(components)) for _ in range(rng.choice([1, 1, 2]))})
     if rng.random() < 0.3:
         way["setup"] = rng.randint(0, 600)
@@ -116,14 +121,18 @@ def confounded(rng: random.Random) -> Drawing:
     """Two or three back doors, some of them with two places to close them."""
     arrows = {("x", "y")} if rng.random() < 0.6 else {("x", "f"), ("f", "y")}
     arrows |= {("a", "x"), ("a", "b"), ("b", "y"), ("c", "x"), ("c", "y")}
-    arrows |= rng.choice([{("d", "x"), ("d", "e"), ("e", "y")}, {("d", "b"), ("d", "x"), ("e", "x")}])
+    arrows |= rng.choice(
+        [{("d", "x"), ("d", "e"), ("e", "y")}, {("d", "b"), ("d", "x"), ("e", "x")}]
+    )
     return arrows, {"d"} if rng.random() < 0.5 else {"e"}, []
 
 
 def instrumental(rng: random.Random) -> Drawing:
     """Candidates for an instrument that share causes with the outcome; treatment and outcome hidden."""
     arrows = {("x", "y"), ("a", "x"), ("b", "a"), ("b", "y")}
-    arrows |= rng.choice([{("c", "x"), ("d", "c"), ("d", "y")}, {("c", "a"), ("c", "e"), ("e", "y")}])
+    arrows |= rng.choice(
+        [{("c", "x"), ("d", "c"), ("d", "y")}, {("c", "a"), ("c", "e"), ("e", "y")}]
+    )
     arrows |= rng.choice([{("d", "b"), ("d", "x")}, {("e", "x"), ("e", "b")}, set()])
     return arrows, set(), [("x", "y")]
 

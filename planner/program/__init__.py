@@ -4,8 +4,8 @@ The only package that knows the solver. A route writes its rows with four words:
 write them in, and ``separated``, ``connected`` and ``cut`` for what paths must or must not do.
 """
 
-from planner.program.cut import cut
 from planner.program.connection import connected
+from planner.program.cut import cut
 from planner.program.model import Literal, Program, RoleLiterals, negation
 from planner.program.separation import separated
 from planner.program.solve import Choice, Found, NothingFound, Solved, cheapest_purchase

@@ -1,6 +1,9 @@
 """The study file as a whole: its keys, its price lists, and the ``Study`` that they make."""
 
-from collections.abc import Mapping, Sequence
+import gc
+from collections.abc import Iterator, Mapping, Sequence
+from contextlib import contextmanager
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -8,7 +11,14 @@ from costs.faults import Faults
 from costs.files import NamedFile, read_file, yaml_tree
 from costs.located import Located
 from costs.prices import Burden, PriceList
-from costs.reading import PriceFile, combined, listed_component, read_burdens, read_price_file
+from costs.reading import (
+    Listed,
+    PriceFile,
+    combined,
+    listed_component,
+    read_burdens,
+    read_price_file,
+)
 from costs.tables import MEANT
 from planner.reading.settings import (
     read_budget,
@@ -28,6 +38,7 @@ from planner.reading.variables import (
 )
 from planner.reading.whole import (
     check_arrows,
+    check_countable,
     check_measurable,
     check_priced,
     check_strengths,
@@ -36,7 +47,7 @@ from planner.reading.whole import (
     read_selected,
 )
 from planner.routes import ROUTES
-from planner.study import HiddenCause, PriceSource, Study
+from planner.study import HiddenCause, PriceSource, Range, Study
 
 __all__ = ["read_study"]
 
@@ -85,17 +96,42 @@ def read_study(path: str | Path, *, prices: Sequence[str | Path] | None = None) 
         With every fault of every file, if there is any.
     """
     faults = Faults()
-    file = read_file(Path(path), faults)
-    tree = yaml_tree(file, faults) if file else None
-    study = None
-    if file and tree:
-        found = entries_of(tree)
-        named = named_lists(file.path, found) if prices is None else [Path(each) for each in prices]
-        lists = [each for name in named if (each := read_price_file(name, faults)) is not None]
-        study = study_of(file, found, lists)
+    with collector_paused():
+        study = read_all(Path(path), None if prices is None else list(map(Path, prices)), faults)
     faults.raise_any()
     assert study is not None, "a study that could not be made has a fault"
     return study
+
+
+def read_all(path: Path, prices: Sequence[Path] | None, faults: Faults) -> Study | None:
+    """Return the study; None where it cannot be made, which is then among the faults."""
+    file = read_file(path, faults)
+    tree = yaml_tree(file, faults) if file else None
+    if file is None or tree is None:
+        return None
+    found = entries_of(tree)
+    named = named_lists(file.path, found) if prices is None else prices
+    lists = [each for name in named if (each := read_price_file(name, faults)) is not None]
+    parts = parts_of(found, lists)
+    study = study_of(file, found, lists, parts)
+    if study is not None and not faults:
+        check_countable(study, parts.listed)
+    return study
+
+
+@contextmanager
+def collector_paused() -> Iterator[None]:
+    """Pause the garbage collector: a file becomes very many small objects, and none is garbage.
+
+    It takes more than half of the time of reading a large study.
+    """
+    was_on = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_on:
+            gc.enable()
 
 
 def entries_of(tree: Located) -> dict[str, Located]:
@@ -112,52 +148,99 @@ def named_lists(study: Path, found: Mapping[str, Located]) -> list[Path]:
     return [study.parent / name for name in found["prices"].names()] if "prices" in found else []
 
 
+@dataclass(frozen=True, kw_only=True, slots=True)
+class Parts:
+    """What the diagram and the price lists hold, before it is a study."""
+
+    waves: tuple[str, ...]
+    default_strength: Range | None
+    drawn: Mapping[str, DrawnVariable]
+    """Empty where the variables could not be read."""
+    hidden_causes: tuple[HiddenCause, ...]
+    burdens: Mapping[str, Burden]
+    listed: tuple[Listed, ...]
+    """Everything that can be bought, from the study file and then from the price lists."""
+
+
+def parts_of(found: Mapping[str, Located], lists: Sequence[PriceFile]) -> Parts:
+    """Read the diagram and everything that can be bought."""
+    waves = read_waves(found)
+    drawn = read_variables(found["variables"], waves) if "variables" in found else {}
+    components = found["components"].named() if "components" in found else {}
+    own = [way for each in drawn.values() for way in each.listed]
+    own += [listed_component(name, place) for name, place in components.items()]
+    others = [each for prices in lists for each in prices.listed]
+    hidden: tuple[HiddenCause, ...] = ()
+    if drawn:
+        check_priced(
+            {each.variable: each.place for each in reversed(others) if each.variable}, drawn
+        )
+        if "hidden_common_causes" in found:
+            hidden = read_hidden_causes(found["hidden_common_causes"], drawn)
+    return Parts(
+        waves=waves,
+        default_strength=read_strength(found["default_strength"])
+        if "default_strength" in found
+        else None,
+        drawn=drawn,
+        hidden_causes=hidden,
+        burdens=read_burdens(found["burdens"]) if "burdens" in found else {},
+        listed=(*own, *others),
+    )
+
+
 def study_of(
-    file: NamedFile, found: Mapping[str, Located], lists: Sequence[PriceFile]
+    file: NamedFile, found: Mapping[str, Located], lists: Sequence[PriceFile], parts: Parts
 ) -> Study | None:
     """Return the study; None where a part that everything hangs on is at fault."""
-    waves = read_waves(found)
-    default = read_strength(found["default_strength"]) if "default_strength" in found else None
-    drawn = read_variables(found["variables"], waves) if "variables" in found else {}
-    hidden: tuple[HiddenCause, ...] = ()
-    if "hidden_common_causes" in found:
-        hidden = read_hidden_causes(found["hidden_common_causes"], drawn)
-    burdens = read_burdens(found["burdens"]) if "burdens" in found else {}
-    prices = read_prices(found, drawn, lists, burdens)
-    check_timing(drawn)
+    drawn = parts.drawn
+    prices = prices_of(parts)
     check_measurable(drawn, prices)
     order = check_arrows(drawn)
+    unchecked = 0
     if order is not None:
-        check_strengths(drawn, hidden, default, order)
-    effect = read_effect(found["effect"], drawn, prices) if "effect" in found else None
-    terms = read_terms(found, burdens)
-    settings: dict[str, Any] = {
+        check_timing(drawn, order)
+        unchecked = check_strengths(drawn, parts.hidden_causes, parts.default_strength, order)
+    effect = read_effect(found["effect"], drawn, prices) if "effect" in found and drawn else None
+    terms = read_terms(found, parts.burdens)
+    settings = read_settings(found, lists, drawn)
+    if effect is None or terms is None:
+        return None
+    return Study(
+        title=read_text(found, "title")
+        or f"What is the effect of {effect.treatment} on {effect.outcome}?",
+        unit=read_text(found, "unit") or "unit",
+        effects=(effect,),
+        variables={name: each.variable for name, each in drawn.items()},
+        hidden_causes=parts.hidden_causes,
+        prices=prices,
+        terms=terms,
+        default_strength=parts.default_strength,
+        waves=parts.waves,
+        unchecked_strengths=unchecked,
+        path=str(file.path),
+        digest=file.digest,
+        price_sources=tuple(source_of(each) for each in lists),
+        **settings,
+    )
+
+
+def read_settings(
+    found: Mapping[str, Located],
+    lists: Sequence[PriceFile],
+    drawn: Mapping[str, DrawnVariable],
+) -> dict[str, Any]:
+    """Return the fields of a study that stand in keys of their own."""
+    selected = found["selected_by"] if "selected_by" in found and drawn else None
+    return {
         "currency": read_currency(found, lists),
-        "selected_by": read_selected(found["selected_by"], drawn) if "selected_by" in found else (),
+        "selected_by": read_selected(selected, drawn) if selected else (),
         "budget": read_budget(found),
         "frame_size": read_frame_size(found),
         "tolerance": read_tolerance(found),
         "design_effect": read_design_effect(found, tuple(ROUTES)),
         "routes": read_routes(found, tuple(ROUTES)),
     }
-    title, unit = read_text(found, "title"), read_text(found, "unit")
-    if effect is None or terms is None:
-        return None
-    return Study(
-        title=title or f"What is the effect of {effect.treatment} on {effect.outcome}?",
-        unit=unit or "unit",
-        effects=(effect,),
-        variables={name: each.variable for name, each in drawn.items()},
-        hidden_causes=hidden,
-        prices=prices,
-        terms=terms,
-        default_strength=default,
-        waves=waves,
-        path=str(file.path),
-        digest=file.digest,
-        price_sources=tuple(source_of(each) for each in lists),
-        **settings,
-    )
 
 
 def source_of(prices: PriceFile) -> PriceSource:
@@ -166,21 +249,10 @@ def source_of(prices: PriceFile) -> PriceSource:
     return PriceSource(path=str(file.path), digest=file.digest, valid_until=prices.valid_until)
 
 
-def read_prices(
-    found: Mapping[str, Located],
-    drawn: Mapping[str, DrawnVariable],
-    lists: Sequence[PriceFile],
-    burdens: Mapping[str, Burden],
-) -> PriceList:
-    """Return all that can be bought, from the study file and then from the price lists."""
-    components = found["components"].named() if "components" in found else {}
-    own = [way for each in drawn.values() for way in each.listed]
-    own += [listed_component(name, place) for name, place in components.items()]
-    others = [each for prices in lists for each in prices.listed]
-    check_priced({each.variable: each.place for each in reversed(others) if each.variable}, drawn)
-    prices = combined([*own, *others], burdens)
-    # In the order of the study, so that the order of a price list changes no answer.
-    ordered = {name: prices.ways[name] for name in drawn if name in prices.ways}
+def prices_of(parts: Parts) -> PriceList:
+    """Return all that can be bought, ways in the order of the study's variables."""
+    prices = combined(parts.listed, parts.burdens)
+    ordered = {name: prices.ways[name] for name in parts.drawn if name in prices.ways}
     return PriceList(ways=ordered, components=prices.components)
 
 

@@ -13,6 +13,7 @@ from planner.study import HIDDEN, HiddenCause, Range, Variable
 
 __all__ = ["DrawnVariable", "read_hidden_causes", "read_strength", "read_variables"]
 
+MOST_VARIABLES = 20_000
 OWN_WAY_KEYS = (*PRICE_KEYS, "takes", "reliability", "yields")
 """Keys of a way that a variable may carry itself: it then has one way, ``standard``."""
 KEYS = (
@@ -45,10 +46,14 @@ class DrawnVariable:
 
 def read_variables(place: Located, waves: Sequence[str]) -> dict[str, DrawnVariable]:
     """Return every variable by name, in the order of the file."""
-    drawn = {name: read_variable(name, each, waves) for name, each in place.named().items()}
-    if not drawn:
+    named = place.named()
+    if not named:
         place.fault("names no variable.", "List the variables of the diagram.")
-    return drawn
+    if len(named) > MOST_VARIABLES:
+        wrong = f"names {len(named):,} variables; at most {MOST_VARIABLES:,} are read."
+        place.fault(wrong, "Leave out what is neither a cause nor an effect of what you ask about.")
+        return {}
+    return {name: read_variable(name, each, waves) for name, each in named.items()}
 
 
 def read_variable(name: str, place: Located, waves: Sequence[str]) -> DrawnVariable:

@@ -1,18 +1,22 @@
 """What can be said only of the study as a whole: names, circles, timing, prices, strengths."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
+from fractions import Fraction
 from graphlib import TopologicalSorter
 from math import ceil, sqrt
 
 from costs.circles import circles
 from costs.located import Located
 from costs.prices import PriceList
+from costs.reading import Listed
+from costs.tally import Overflow, Tally
 from planner.reading.variables import DrawnVariable
 from planner.strengths import explained_shares, loadings
-from planner.study import Effect, HiddenCause, Range
+from planner.study import Effect, HiddenCause, Range, Study
 
 __all__ = [
     "check_arrows",
+    "check_countable",
     "check_measurable",
     "check_priced",
     "check_strengths",
@@ -109,23 +113,52 @@ def check_arrows(drawn: Drawn) -> list[str] | None:
     return None if found else list(TopologicalSorter(before).static_order())
 
 
-def check_timing(drawn: Drawn) -> None:
-    """Say which causes come later than their effect."""
-    for name, each in drawn.items():
+def check_timing(drawn: Drawn, order: Sequence[str]) -> None:
+    """Say which causes come later than their effect, also where untimed variables lie between."""
+    latest: dict[str, str] = {}
+    """For each variable, whichever of itself and its causes has the latest time."""
+    for name in order:
+        each = drawn[name]
+        own = each.variable.when
+        if own is not None:
+            latest[name] = name
         for cause, place in each.cause_places.items():
-            earlier = drawn[cause].variable.when if cause in drawn else None
-            later = each.variable.when
-            if earlier is not None and later is not None and earlier > later:
+            before = latest.get(cause)
+            if before is None:
+                continue
+            time = time_of(drawn, before)
+            if own is not None and time > own:
                 place.fault(
-                    f"'{cause}' (when {float(earlier):g}) comes later than '{name}' (when {float(later):g}), which it causes.",
-                    "Correct one of the two times, or turn the arrow round.",
+                    f"'{before}' ({shown_time(drawn, before)}) comes later than '{name}'"
+                    f" ({shown_time(drawn, name)}), which follows from it.",
+                    "Correct one of the two times, or turn an arrow round.",
                 )
+            elif name not in latest or time > time_of(drawn, latest[name]):
+                latest[name] = before
+
+
+def time_of(drawn: Drawn, name: str) -> Fraction:
+    """Return the time of a variable that has one."""
+    when = drawn[name].variable.when
+    assert when is not None, "only timed variables are remembered"
+    return when
+
+
+def shown_time(drawn: Drawn, name: str) -> str:
+    """Return the time of a variable as it is shown."""
+    return f"when {float(time_of(drawn, name)):g}"
 
 
 def check_strengths(
     drawn: Drawn, hidden: Sequence[HiddenCause], default: Range | None, order: Sequence[str]
-) -> None:
-    """Say which variables are explained to 100 % or more, and what factor would fit."""
+) -> int:
+    """Say which variables are explained to 100 % or more, and what factor would fit.
+
+    Returns
+    -------
+    int
+        Variables for which that would take too long to say.
+    """
     causes = {name: coefficients(each, default) for name, each in drawn.items()}
     for cause in hidden:
         both = likely(cause.strength)
@@ -135,14 +168,30 @@ def check_strengths(
         for name, loading in zip(cause.of, pair, strict=True):
             causes[name] = {**causes[name], cause.name: loading}
     names = [cause.name for cause in hidden] + list(order)
-    for name, share in explained_shares(causes, names).items():
-        if share > ALMOST_ALL:
+    shares = explained_shares(causes, names)
+    for name, share in shares.items():
+        if share is not None and share > ALMOST_ALL:
             # The largest factor of three decimals that leaves some noise.
             factor = (ceil(1000 / sqrt(share) - 1e-9) - 1) / 1000
             drawn[name].place.fault(
-                f"is explained to {100 * share:.1f} % by its causes, and less than 100 % is possible.",
+                f"is explained to {100 * share:.1f} % by its causes; less than 100 % is possible.",
                 f"Multiply the strengths of all arrows into it by {factor:g} or less.",
             )
+    return sum(share is None for share in shares.values())
+
+
+def check_countable(study: Study, every: Iterable[Listed]) -> None:
+    """Say whether the amounts are too large to be added up in whole numbers."""
+    tally = Tally.of(study.prices, study.terms)
+    try:
+        tally.lines(tally.first_level)
+    except Overflow as overflow:
+        for each in every:
+            if overflow.name in (each.name, f"{each.variable}.{each.name}"):
+                each.place.fault(
+                    f"is too dear to be added up exactly: {overflow}",
+                    "Lower the price or the number of records, or count in a larger unit of money.",
+                )
 
 
 def coefficients(each: DrawnVariable, default: Range | None) -> Mapping[str, float | None]:

@@ -19,7 +19,11 @@ class Words:
     """
 
     title: str
-    """What the analysis does, after "by"."""
+    """The route's name in a sentence, after "by"."""
+    analysis: str
+    """What is done with the readings; takes ``{instruments}``, ``{mediators}``, and ``{covariates}``."""
+    bare_analysis: str
+    """The same where there are no covariates."""
     estimand: str
     leans_on: tuple[str, ...]
     """What must be true and cannot be seen in the data; each a clause in plain words."""

@@ -13,10 +13,9 @@ import statistics
 import subprocess
 import sys
 import time
-from pathlib import Path
+from fractions import Fraction
 
 from costs.prices import PriceList, Terms, Way
-from fractions import Fraction
 from planner.planning import recommend
 from planner.study import Effect, HiddenCause, Study, Variable
 

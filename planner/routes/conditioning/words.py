@@ -6,16 +6,21 @@ __all__ = ["WORDS"]
 
 WORDS = Words(
     title="conditioning on covariates",
+    analysis="adjust for {covariates}",
+    bare_analysis="compare units as they are, with nothing to adjust for",
     estimand="average effect",
     leans_on=(
-        "nothing unmeasured still drives both {treatment} and {outcome} once these covariates are held",
-        "every stratum of the covariates holds units with much and with little of {treatment}",
+        "nothing unmeasured still drives both {treatment} and {outcome} once the covariates are"
+        " adjusted for",
+        "among units alike in the covariates, some have much and some little of {treatment}"
+        " (positivity)",
     ),
     sentences={
-        "back_doors_closed": "Holding {all} closes every path that could mix other causes into the effect.",
-        "back_doors_closed:none": "No path mixes other causes into the effect; nothing has to be held.",
-        "back_door_open": "The path {path} stays open whatever is measured.",
-        "back_door_open:some": "Whatever is held, some path stays open; with all that can be held it is"
-        " {path}, opened by holding {all}.",
+        "back_doors_closed": "adjusting for {all} closes every path that would mix other causes in.",
+        "back_doors_closed:none": "no path mixes other causes in; there is nothing to adjust for.",
+        "back_door_open": "the path {path} stays open whatever is measured.",
+        "back_door_open:some": "some path stays open whatever is measured; adjusting for everything"
+        " that can be leaves {path}, which is open because {all} is adjusted for, or what follows"
+        " from it.",
     },
 )

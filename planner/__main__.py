@@ -1,0 +1,5 @@
+"""``python -m planner`` is ``measurewise``."""
+
+from planner.cli import main
+
+main()

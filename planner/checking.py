@@ -1,0 +1,184 @@
+"""What a study holds, and what is worth a second look before anything is searched."""
+
+from collections.abc import Iterator
+from dataclasses import asdict, dataclass
+from datetime import date
+
+from costs.bill import needed_by
+from costs.located import listed, shortened
+from planner.study import Study
+
+__all__ = ["Summary", "not_yet_applied", "out_of_date", "remarks", "summary_of"]
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class Summary:
+    """A study in figures."""
+
+    title: str
+    treatment: str
+    outcome: str
+    records: int
+    variables: int
+    measurable: int
+    hidden_common_causes: int
+    arrows: int
+    arrows_with_strength: int
+    ways: int
+    components: int
+    free_ways: int
+    """Ways with no price of their own: per unit, set-up or batch."""
+    timed: int
+    """Variables with a time."""
+    times: tuple[str, ...]
+    """The times that occur, earliest first."""
+    remarks: tuple[str, ...]
+
+    def as_dict(self) -> dict[str, object]:
+        """Return the figures as plain values."""
+        return asdict(self)
+
+
+def summary_of(study: Study, today: date) -> Summary:
+    """Return a study in figures, with remarks."""
+    (effect,) = study.effects
+    ways = [way for named in study.prices.ways.values() for way in named.values()]
+    strengths = [s for each in study.variables.values() for s in each.causes.values()]
+    whens = [each.when for each in study.variables.values() if each.when is not None]
+    return Summary(
+        title=study.title,
+        treatment=effect.treatment,
+        outcome=effect.outcome,
+        records=study.terms.records,
+        variables=len(study.variables),
+        measurable=len(study.prices.ways),
+        hidden_common_causes=len(study.hidden_causes),
+        arrows=len(strengths),
+        arrows_with_strength=sum(strength is not None for strength in strengths),
+        ways=len(ways),
+        components=len(study.prices.components),
+        free_ways=sum(not (way.per_unit or way.setup or way.batch) for way in ways),
+        timed=len(whens),
+        times=tuple(study.waves) or tuple(f"{float(when):g}" for when in sorted(set(whens))),
+        remarks=tuple(remarks(study, today)),
+    )
+
+
+def remarks(study: Study, today: date) -> Iterator[str]:
+    """Return what is worth a second look."""
+    yield from not_yet_applied(study)
+    yield from out_of_date(study, today)
+    yield from no_way_to_the_outcome(study)
+    yield from outside_the_diagram(study)
+    yield from beside_the_losses(study)
+    yield from never_needed(study)
+    yield from too_unreliable(study)
+    yield from resting_on_default(study)
+
+
+def not_yet_applied(study: Study) -> Iterator[str]:
+    """Say which keys are read and kept, but change no answer yet."""
+    if study.tolerance.bias is not None:
+        yield "tolerance.bias is not applied yet: plans are not checked for bias by poor readings."
+    if study.unchecked_strengths:
+        yield (
+            f"The strengths into {study.unchecked_strengths:,} variables were not added up: the diagram"
+            " is too large for it."
+        )
+    if study.tolerance.first_stage_f is not None:
+        yield "tolerance.first_stage_F is not applied yet: an instrument's strength is not checked."
+
+
+def out_of_date(study: Study, today: date) -> Iterator[str]:
+    """Say which price lists are no longer valid."""
+    for source in study.price_sources:
+        if source.valid_until is not None and source.valid_until < today:
+            yield f"The prices in {source.path} were valid until {source.valid_until}."
+
+
+def no_way_to_the_outcome(study: Study) -> Iterator[str]:
+    """Say if no directed path leads from treatment to outcome."""
+    for effect in study.effects:
+        if effect.treatment not in causes_of(effect.outcome, study):
+            yield (
+                f"No directed path leads from {effect.treatment} to {effect.outcome}: by this diagram"
+                " the effect is zero. Nine times in ten an arrow was forgotten."
+            )
+
+
+def causes_of(variable: str, study: Study) -> set[str]:
+    """Return everything with a directed path into a variable."""
+    found, stack = {variable}, [variable]
+    while stack:
+        for cause in study.variables[stack.pop()].causes:
+            if cause not in found:
+                found.add(cause)
+                stack.append(cause)
+    return found
+
+
+def outside_the_diagram(study: Study) -> Iterator[str]:
+    """Say which variables have no arrow at all."""
+    joined = {name for name, each in study.variables.items() if each.causes}
+    joined |= {cause for each in study.variables.values() for cause in each.causes}
+    joined |= {name for hidden in study.hidden_causes for name in hidden.of}
+    alone = [name for name in study.variables if name not in joined]
+    if alone:
+        yield f"No arrow leads into or out of {listed(alone)}."
+
+
+def beside_the_losses(study: Study) -> Iterator[str]:
+    """Say which ways are paid for units that an always bought component loses."""
+    prices = study.prices
+    for name, component in prices.components.items():
+        if not component.always or component.yields == 1:
+            continue
+        beside = [
+            f"{variable}.{way}"
+            for variable, named in prices.ways.items()
+            for way, purchase in named.items()
+            if name not in needed_by(purchase.needs, prices)
+        ]
+        if beside:
+            yield (
+                f"'{shortened(name)}' is always bought and yields {float(component.yields):g}, but"
+                f" {listed(beside)} {'does' if len(beside) == 1 else 'do'} not need it: paid for every"
+                " unit started, also for those that are lost."
+            )
+
+
+def never_needed(study: Study) -> Iterator[str]:
+    """Say which components nothing needs."""
+    prices = study.prices
+    needs = [way.needs for named in prices.ways.values() for way in named.values()]
+    needs += [component.needs for component in prices.components.values()]
+    wanted = {name for names in needs for name in names}
+    idle = [
+        name
+        for name, component in prices.components.items()
+        if name not in wanted and not component.always
+    ]
+    if idle:
+        yield f"Nothing needs {listed(idle)}."
+
+
+def too_unreliable(study: Study) -> Iterator[str]:
+    """Say which variables have no way that is reliable enough."""
+    least = study.tolerance.least_reliability
+    if least is not None:
+        poor = [
+            name
+            for name, named in study.prices.ways.items()
+            if all(way.reliability < least for way in named.values())
+        ]
+        if poor:
+            yield f"No way of measuring {listed(poor)} reaches a reliability of {float(least):g}."
+
+
+def resting_on_default(study: Study) -> Iterator[str]:
+    """Say how many arrows rest on the default strength."""
+    if study.default_strength is not None:
+        strengths = [s for each in study.variables.values() for s in each.causes.values()]
+        resting = sum(strength is None for strength in strengths)
+        resting += 2 * sum(hidden.strength is None for hidden in study.hidden_causes)
+        yield f"{resting} arrows rest on the default strength."

@@ -1,0 +1,232 @@
+"""The command line: each command reads, calls one function, reports.
+
+Reports go to stdout, everything else to stderr. Exit 0: a plan; 1: no plan, reported in full; 2: the
+input is at fault.
+"""
+
+import json
+import sys
+from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager
+from datetime import UTC, datetime
+from importlib import resources
+from pathlib import Path
+from typing import Annotated
+
+import typer
+from rich.console import Console
+
+from costs.faults import FaultyInput
+from planner import whatif
+from planner.checking import Summary, not_yet_applied, out_of_date, summary_of
+from planner.reading import read_study
+from planner.report.files import refuse_overwriting, write_whole
+from planner.study import Study
+from planner.version import VERSION
+
+__all__ = ["app", "main"]
+
+NO_PLAN, AT_FAULT = 1, 2
+"""Exit codes."""
+
+app = typer.Typer(
+    name="measurewise",
+    help="Find the cheapest measurements with which a study can learn an effect, and prove it.",
+    no_args_is_help=True,
+    pretty_exceptions_enable=False,
+    rich_markup_mode=None,
+)
+
+StudyFile = Annotated[Path, typer.Argument(metavar="STUDY", help="Study file (YAML).")]
+AsJson = Annotated[bool, typer.Option("--json", help="Print one JSON document and nothing else.")]
+
+
+def print_version(wanted: bool) -> None:  # noqa: FBT001 - typer hands the flag over by position
+    """Print the version and stop, if it was asked for."""
+    if wanted:
+        typer.echo(f"measurewise {VERSION}")
+        raise typer.Exit
+
+
+@app.callback()
+def measurewise(
+    version: Annotated[
+        bool,
+        typer.Option("--version", callback=print_version, is_eager=True, help="Print the version."),
+    ] = False,
+) -> None:
+    """Find the cheapest measurements with which a study can learn an effect, and prove it."""
+
+
+@app.command()
+def new(
+    path: Annotated[Path, typer.Argument(metavar="STUDY", help="File to write.")] = Path(
+        "study.yaml"
+    ),
+) -> None:
+    """Write a commented study file to fill in; never over another file."""
+    refuse_overwriting(path, "new")
+    template = resources.files("planner").joinpath("new_study.yaml").read_bytes()
+    write_whole(path, template, "new")
+    say(f"{path} is written. Next: measurewise check {path}")
+
+
+@app.command()
+def check(study: StudyFile, as_json: AsJson = False) -> None:
+    """Say what a study holds, and everything that is wrong with it."""
+    with numpy_left_out():
+        summary = summary_of(read_study(study), datetime.now(tz=UTC).date())
+    if as_json:
+        print_json(summary.as_dict())
+    else:
+        print_summary(study, summary)
+
+
+@app.command()
+def recommend(
+    study: StudyFile,
+    as_json: AsJson = False,
+    route: Annotated[
+        list[str] | None,
+        typer.Option(
+            help="Allow this route only: conditioning, instrument or mechanism. Repeatable."
+        ),
+    ] = None,
+    records: Annotated[
+        int | None, typer.Option(help="Complete records, in place of the study's.")
+    ] = None,
+    without: Annotated[
+        list[str] | None,
+        typer.Option(help="A variable, VARIABLE.WAY or component that cannot be had. Repeatable."),
+    ] = None,
+    held: Annotated[
+        list[str] | None,
+        typer.Option(metavar="VARIABLE.WAY", help="A reading already in hand, free. Repeatable."),
+    ] = None,
+    prices: Annotated[
+        list[Path] | None, typer.Option(help="Price list in place of the study's. Repeatable.")
+    ] = None,
+    workbook: Annotated[
+        Path | None, typer.Option(help="Write measurement list and bill to this XLSX file.")
+    ] = None,
+    force: Annotated[bool, typer.Option("--force", help="Replace files that are there.")] = False,
+    seconds: Annotated[float, typer.Option(min=0.1, help="Time for each route.")] = 60.0,
+) -> None:
+    """Find the cheapest plan, prove it, and say why each item is in it or not."""
+    if workbook is not None:
+        refuse_overwriting(workbook, "--workbook", force=force)
+    changed = what_if(read_study(study, prices=prices), route, records, without, held)
+    for remark in (*not_yet_applied(changed), *out_of_date(changed, datetime.now(tz=UTC).date())):
+        say(f"note: {remark}")
+    # Imported here, so that help and check do without the solver.
+    from planner.planning import recommend as recommended  # noqa: PLC0415
+    from planner.report.terminal import print_report  # noqa: PLC0415
+    from planner.report.view import view_of  # noqa: PLC0415
+
+    with progress() as report:
+        answer = recommended(changed, seconds=seconds, report=report)
+    view = view_of(answer)
+    if as_json:
+        print_json(answer.as_dict())
+    else:
+        print_report(view, Console())
+    if workbook is not None and answer.buy is None:
+        say(f"There is no plan, so {workbook} is not written.")
+    elif workbook is not None and answer.buy is not None:
+        from planner.report.workbook import workbook_bytes  # noqa: PLC0415
+
+        write_whole(workbook, workbook_bytes(view, changed, answer.buy), "--workbook")
+        say(f"{workbook} is written.")
+    if answer.buy is None:
+        raise typer.Exit(NO_PLAN)
+
+
+def what_if(
+    study: Study,
+    routes: Sequence[str] | None,
+    records: int | None,
+    without: Sequence[str] | None,
+    held: Sequence[str] | None,
+) -> Study:
+    """Return the study with what the options ask for."""
+    if routes:
+        study = whatif.with_routes(study, routes)
+    if records is not None:
+        study = whatif.with_records(study, records)
+    for name in without or ():
+        study = whatif.without(study, name)
+    for name in held or ():
+        study = whatif.held(study, name)
+    return study
+
+
+def print_json(values: dict[str, object]) -> None:
+    """Print one JSON document."""
+    typer.echo(json.dumps(values, ensure_ascii=False, indent=2, allow_nan=False))
+
+
+def print_summary(path: Path, summary: Summary) -> None:
+    """Print what a study holds."""
+    unmeasurable = summary.variables - summary.measurable
+    rows = {
+        "effect": f"{summary.treatment} on {summary.outcome}",
+        "records": f"{summary.records:,}",
+        "variables": f"{summary.variables:,}: {summary.measurable:,} measurable, {unmeasurable:,} not;"
+        f" {summary.hidden_common_causes:,} hidden common causes",
+        "arrows": f"{summary.arrows:,}, {summary.arrows_with_strength:,} of them with a strength",
+        "prices": f"{summary.ways:,} ways of measuring, all priced, {summary.free_ways:,} with no price"
+        f" of their own; {summary.components:,} components",
+        "timing": f"{summary.timed:,} variables with a time: {', '.join(summary.times)}"
+        if summary.timed
+        else "no times given",
+    }
+    console = Console(soft_wrap=True, markup=False, highlight=False)
+    console.print(f"{path}: no faults.")
+    console.print(summary.title)
+    for heading, text in rows.items():
+        console.print(f"  {heading:<11}{text}")
+    if summary.remarks:
+        console.print("Worth a second look:")
+        for remark in summary.remarks:
+            console.print(f"  - {remark}")
+
+
+@contextmanager
+def numpy_left_out() -> Iterator[None]:
+    """Leave numpy out of the process: the workbook library looks for it, only to know its numbers.
+
+    None of ours are, and loading it takes as long as all the rest of the check.
+    """
+    if "numpy" in sys.modules:
+        yield
+        return
+    sys.modules["numpy"] = None  # type: ignore[assignment]  # makes the import fail, as documented
+    try:
+        yield
+    finally:
+        del sys.modules["numpy"]
+
+
+@contextmanager
+def progress() -> Iterator[Callable[[str], None]]:
+    """Show what is being worked on, on stderr, where that is a terminal."""
+    console = Console(stderr=True)
+    if not console.is_terminal:
+        yield lambda _: None
+        return
+    with console.status("measurewise") as status:
+        yield lambda text: status.update(f"Searching {text} …")
+
+
+def say(text: str) -> None:
+    """Say something that is no report."""
+    typer.echo(text, err=True)
+
+
+def main(arguments: Sequence[str] | None = None) -> None:
+    """Run the command line; what is at fault in the input is printed whole."""
+    try:
+        app(args=None if arguments is None else list(arguments))
+    except FaultyInput as faulty:
+        say(str(faulty))
+        sys.exit(AT_FAULT)
