@@ -95,7 +95,7 @@ class Bill:
 
 
 def needed_by(names: Iterable[str], prices: PriceList) -> tuple[str, ...]:
-    """Return the named components with everything that they need, in the order of the price list."""
+    """Return the named components and all that they need, in the order of the price list."""
     found: set[str] = set()
     stack = list(names)
     while stack:
@@ -114,7 +114,10 @@ def bought(ways: Iterable[WayName], prices: PriceList) -> tuple[str, ...]:
 
 
 def reach(purchase: Purchase, prices: PriceList) -> Fraction:
-    """Return the share of the units started that a purchase still meets: its own yield not counted."""
+    """Return the share of the units started that a purchase still meets.
+
+    Its own yield does not count: it is paid for before it fails.
+    """
     return prod(
         (prices.components[name].yields for name in needed_by(purchase.needs, prices)),
         start=Fraction(1),

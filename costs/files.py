@@ -1,4 +1,4 @@
-"""Opening the files that the user named, and nothing else: bytes, text and the tree of a YAML file."""
+"""Opening the files that the user named, and nothing else: bytes, text, and trees of YAML."""
 
 import hashlib
 from dataclasses import dataclass
@@ -73,28 +73,30 @@ def yaml_tree(file: NamedFile, faults: Faults) -> Located | None:
     if text is None:
         return None
     builder = TreeBuilder(file.path, faults)
+    fault = fault_of_events(file.path, text, builder)
+    if fault is not None:
+        faults.add(fault)
+    if fault is not None or builder.root is None or builder.documents > 1:
+        return None
+    return Located(builder.root, "", Source(str(file.path), faults))
+
+
+def fault_of_events(path: Path, text: str, builder: "TreeBuilder") -> Fault | None:
+    """Build the tree of a text; return what makes it useless as a whole, if anything does."""
     try:
         for event in yaml.parse(text, Loader=Loader):
             builder.take(event)
     except yaml.YAMLError as error:
-        faults.add(syntax_fault(file.path, text, error))
-        return None
+        return syntax_fault(path, text, error)
     except RecursionError:  # where PyYAML has no libyaml to refuse it
         wrong = "nests its values too deeply."
-        faults.add(fault_of(file.path, START, wrong, "No key needs more than eight levels."))
-        return None
-    root = builder.root
-    if root is None:
-        wrong = "is empty."
-        faults.add(
-            fault_of(file.path, START, wrong, "'measurewise new' writes a study to fill in.")
-        )
-        return None
+        return fault_of(path, START, wrong, "No key needs more than eight levels.")
+    if builder.root is None:
+        return fault_of(path, START, "is empty.", "'measurewise new' writes a study to fill in.")
     if builder.values > MOST_VALUES:
         wrong = f"stands for more than {MOST_VALUES:,} values once its aliases are written out."
-        faults.add(fault_of(file.path, START, wrong, "Write the entries without aliases."))
-        return None
-    return Located(root, "", Source(str(file.path), faults))
+        return fault_of(path, START, wrong, "Write the entries without aliases.")
+    return None
 
 
 class Unfinished:
@@ -131,7 +133,7 @@ class TreeBuilder:
         self._faults = faults
         self._open: list[Unfinished] = []
         self._anchors: dict[str, tuple[Node, int]] = {}
-        self._documents = 0
+        self.documents = 0
         self.root: Node | None = None
         self.values = 0
 
@@ -140,7 +142,7 @@ class TreeBuilder:
         match event:
             case yaml.ScalarEvent():
                 self._look_at_tag(event)
-                scalar = Scalar(spot_of(event), event.value, event.style is None)
+                scalar = Scalar(spot_of(event), event.value, not event.style)
                 self._add(scalar, 1, event.anchor)
             case yaml.CollectionStartEvent():
                 self._look_at_tag(event)
@@ -151,8 +153,8 @@ class TreeBuilder:
             case yaml.AliasEvent():
                 self._add_alias(event)
             case yaml.DocumentStartEvent():
-                self._documents += 1
-                if self._documents == 2:
+                self.documents += 1
+                if self.documents == 2:
                     wrong = "holds a second document, after '---'."
                     self._say(event, wrong, "Put each study into a file of its own.")
             case _:
@@ -164,7 +166,7 @@ class TreeBuilder:
         if self._open:
             self._open[-1].parts.append(node)
             self._open[-1].values += values
-        elif self._documents == 1 and not (isinstance(node, Scalar) and node.is_empty):
+        elif self.documents == 1 and not (isinstance(node, Scalar) and node.is_empty):
             self.root, self.values = node, values
 
     def _add_alias(self, event: yaml.AliasEvent) -> None:
@@ -200,7 +202,10 @@ def syntax_fault(path: Path, text: str, error: yaml.YAMLError) -> Fault:
     problem = getattr(error, "problem", None) or getattr(error, "reason", None) or "cannot be read"
     position = getattr(error, "position", None)
     row = mark.line + 1 if mark else text.count("\n", 0, position or 0) + 1
-    mend = "Look at this line and the one above: indentation, a missing colon, an open quote or bracket."
+    mend = (
+        "Look at this line and the one above: indentation, a missing colon, an open quote or"
+        " bracket."
+    )
     return fault_of(path, Spot(row), f"is no YAML here: {problem}.", mend)
 
 

@@ -13,6 +13,7 @@ from difflib import get_close_matches
 from fractions import Fraction
 from types import MappingProxyType
 from typing import NamedTuple
+from unicodedata import category
 
 from costs.faults import Fault, Faults, Spot
 
@@ -121,10 +122,15 @@ class Located:
 
     def fault(self, wrong: str, mend: str) -> None:
         """Say that something is wrong here, and how to mend it."""
-        fault = Fault(
-            file=self.source.file, spot=self.node.spot, key=self.key, wrong=wrong, mend=mend
+        self.source.faults.add(
+            Fault(
+                file=self.source.file,
+                spot=self.node.spot,
+                key=self.key or "file",
+                wrong=wrong,
+                mend=mend,
+            )
         )
-        self.source.faults.add(fault)
 
     # ------------------------------------------------------------------ mappings and lists
 
@@ -241,7 +247,7 @@ class Located:
         if not name:
             self.fault("is empty, where a name is wanted.", "Write a name.")
             return None
-        if not name.isprintable():
+        if not name.isprintable() and any(is_control(char) for char in name):
             self.fault(
                 f"is {self.shown}, a name with a character that cannot be printed.",
                 "Leave line breaks and control characters out of names.",
@@ -286,7 +292,7 @@ class Located:
         below: Fraction | int | None = None,
         places: int = MOST_PLACES,
     ) -> Fraction | None:
-        """Return a number, exactly as written; None, with a fault, if it is none or outside its bounds.
+        """Return a number, exactly as written; None, with a fault, if it is none or out of bounds.
 
         Parameters
         ----------
@@ -347,6 +353,11 @@ class Located:
             return None
         if self.source.decimal_comma:
             text = text.replace(",", ".")
+        if text.startswith("="):
+            self.fault(
+                f"is the formula {self.shown}, and none is computed.", "Write the number itself."
+            )
+            return None
         if not NUMBER.fullmatch(text):
             wrong = (
                 "is empty, where a number is wanted."
@@ -376,11 +387,16 @@ def nearest(name: str, known: Collection[str]) -> str:
     return f"Known here: {listed(known)}." if known else "Nothing is known here yet."
 
 
+def is_control(char: str) -> bool:
+    """Say whether a character breaks a line or controls a terminal; joiners of emoji do neither."""
+    return category(char) in {"Cc", "Cs", "Zl", "Zp"}
+
+
 def shortened(text: str, most: int = 60) -> str:
     """Return the text on one line, cut where it is longer than ``most`` characters."""
     if len(text) <= most and text.isprintable():
         return text
-    line = "".join(char if char.isprintable() else " " for char in text)
+    line = "".join(" " if is_control(char) else char for char in text[: most + 1])
     return line if len(line) <= most else f"{line[: most - 1]}…"
 
 

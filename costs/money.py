@@ -8,17 +8,17 @@ __all__ = ["integer_scale", "plain_number"]
 
 
 def integer_scale(amounts: Iterable[Fraction]) -> Fraction:
-    """Return the largest unit of which every amount is a whole multiple; 1 where there is none but 0.
+    """Return the largest unit of which every amount is a whole multiple; 1 if all are 0.
 
     Prices have at most four decimals and burdens two more, so the unit is never below one
-    millionth; where all prices are whole tens it is ten.
+    millionth; where all prices are whole hundreds it is a hundred or more.
 
     Examples
     --------
     >>> integer_scale([Fraction("12.50"), Fraction("0.75"), Fraction(3)])
     Fraction(1, 4)
     >>> integer_scale([Fraction(3000), Fraction(40)])
-    Fraction(20, 1)
+    Fraction(40, 1)
     """
     numerator, denominator = 0, 1
     for amount in amounts:

@@ -80,7 +80,7 @@ class Way(Purchase):
     """Share of the variance of the readings that is variance of what is measured."""
 
     def __post_init__(self) -> None:
-        # A dataclass with slots is made anew, so ``super()`` without arguments would name the old one.
+        # A dataclass with slots is made anew, and a bare ``super()`` would name the old one.
         Purchase.__post_init__(self)
         assert 0 < self.reliability <= 1, "a reliability is a share above 0"
 

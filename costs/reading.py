@@ -1,8 +1,8 @@
 """Price lists, from YAML, CSV and XLSX, and from the study file itself, to one ``PriceList``.
 
 Reading goes in two steps. Each place where something can be bought becomes a ``Listed``, with its
-line; all of them together become a ``PriceList``, and only then can be said which names are unknown,
-given twice, or need each other in a circle.
+line; all of them together become a ``PriceList``, and only then can be said which names are
+unknown, given twice, or need each other in a circle.
 """
 
 from collections.abc import Callable, Iterable, Iterator, Mapping
@@ -32,7 +32,7 @@ __all__ = [
 PRICE_KEYS = ("per_unit", "setup", "batch", "needs")
 """A price counts as given when one of these is there."""
 WAY_KEYS = ("label", *PRICE_KEYS, "takes", "reliability", "yields", "care", *TEXTS)
-COMPONENT_KEYS = tuple(key for key in WAY_KEYS if key != "reliability") + ("always",)
+COMPONENT_KEYS = (*(key for key in WAY_KEYS if key != "reliability"), "always")
 LATER_WAY_KEYS = ("on", "tiers", "weeks")
 LATER_COMPONENT_KEYS = (*LATER_WAY_KEYS, "cuts")
 PRICE_PLACES = 4
@@ -118,7 +118,7 @@ def table_prices(file: NamedFile, rows: Iterable[Row]) -> PriceFile:
 
 
 def listed_in_row(row: Row) -> Iterator[Listed]:
-    """Return the way or the component that a row lists; none, with a fault, where it names neither."""
+    """Return the way or the component that a row lists; none, with a fault, if it names neither."""
     variable, way, component = (row.cell(column) for column in ("variable", "way", "component"))
     place = row.entry("row")
     if (variable is None) == (component is None):
@@ -158,7 +158,7 @@ def listed_component(name: str, place: Located) -> Listed:
 def names_in(
     place: Located, found: Mapping[str, Located]
 ) -> tuple[dict[str, Located], dict[str, Located]]:
-    """Return the components and the burdens that are named, to be looked up; no price is a fault."""
+    """Return the components and burdens that are named, to be looked up; no price is a fault."""
     if not any(key in found for key in PRICE_KEYS):
         mend = "Write 'per_unit: 0' if it costs nothing, else any of per_unit, setup, batch, needs."
         place.fault("has no price.", mend)
@@ -170,7 +170,7 @@ def names_in(
 def purchase_fields(
     found: Mapping[str, Located], needs: Mapping[str, Located], takes: Mapping[str, Located]
 ) -> dict[str, Any]:
-    """Return the fields of ``Purchase``; what cannot be read is left at its default, with a fault."""
+    """Return the fields of ``Purchase``; what cannot be read keeps its default, with a fault."""
     read: dict[str, Any] = {
         "setup": read_price(found["setup"]) if "setup" in found else None,
         "per_unit": read_price(found["per_unit"]) if "per_unit" in found else None,
@@ -229,7 +229,7 @@ def read_texts(found: Mapping[str, Located]) -> dict[str, str]:
 
 
 def read_answers(place: Located) -> str | None:
-    """Return a text; a list of texts, such as the answers to a question, is joined by semicolons."""
+    """Return a text; a list of texts, such as possible answers, is joined by semicolons."""
     if place.is_list:
         return "; ".join(filter(None, (item.text() for item in place.items())))
     return place.text()
@@ -252,7 +252,7 @@ def read_burdens(place: Located) -> dict[str, Burden]:
     return burdens
 
 
-# -------------------------------------------------------------------------------- all lists together
+# ------------------------------------------------------------------------------- all lists together
 
 
 def combined(every: Iterable[Listed], burdens: Mapping[str, Burden]) -> PriceList:

@@ -1,4 +1,6 @@
-"""Price lists as tables: CSV with either separator, and XLSX. A row becomes the tree that YAML gives.
+"""Price lists as tables: CSV with either separator, and XLSX.
+
+A row becomes the tree that YAML gives.
 
 A formula is read as the text it is and never computed; a workbook is read as a stream, and one that
 would unpack to far more than a price list holds is refused.
@@ -158,9 +160,7 @@ def workbook_cells(path: Path, content: bytes, faults: Faults) -> list[list[list
             ]
 
     try:
-        with zipfile.ZipFile(io.BytesIO(content)) as archive:
-            if sum(part.file_size for part in archive.infolist()) > LARGEST_UNPACKED:
-                raise ValueError(f"it unpacks to more than {LARGEST_UNPACKED // 10**6} MB")
+        refuse_endless(content)
         book = load_workbook(io.BytesIO(content), read_only=True, data_only=False)
         many = len(book.worksheets) > 1
         return [
@@ -178,6 +178,13 @@ def workbook_cells(path: Path, content: bytes, faults: Faults) -> list[list[list
             )
         )
         return []
+
+
+def refuse_endless(content: bytes) -> None:
+    """Refuse an archive that would unpack to far more than a price list holds."""
+    with zipfile.ZipFile(io.BytesIO(content)) as archive:
+        if sum(part.file_size for part in archive.infolist()) > LARGEST_UNPACKED:
+            raise ValueError(f"it unpacks to more than {LARGEST_UNPACKED // 10**6} MB")
 
 
 def cell_text(value: object) -> str:

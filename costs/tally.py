@@ -31,7 +31,8 @@ class Overflow(Exception):  # noqa: N818 - it names what happened
         """The purchase of the largest amount."""
         self.unit = unit
         super().__init__(
-            f"in units of {unit} the amounts reach 2^60, most of it for '{self.name}'."
+            f"all amounts together reach 2^60 times {float(unit):g}, the largest amount of money"
+            " that divides them all."
         )
 
 

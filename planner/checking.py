@@ -82,8 +82,8 @@ def not_yet_applied(study: Study) -> Iterator[str]:
         yield "tolerance.bias is not applied yet: plans are not checked for bias by poor readings."
     if study.unchecked_strengths:
         yield (
-            f"The strengths into {study.unchecked_strengths:,} variables were not added up: the diagram"
-            " is too large for it."
+            f"The strengths into {study.unchecked_strengths:,} variables were not added up: the"
+            " diagram is too large for it."
         )
     if study.tolerance.first_stage_f is not None:
         yield "tolerance.first_stage_F is not applied yet: an instrument's strength is not checked."
@@ -101,8 +101,8 @@ def no_way_to_the_outcome(study: Study) -> Iterator[str]:
     for effect in study.effects:
         if effect.treatment not in causes_of(effect.outcome, study):
             yield (
-                f"No directed path leads from {effect.treatment} to {effect.outcome}: by this diagram"
-                " the effect is zero. Nine times in ten an arrow was forgotten."
+                f"No directed path leads from {effect.treatment} to {effect.outcome}: by this"
+                " diagram the effect is zero. Nine times in ten an arrow was forgotten."
             )
 
 
@@ -140,10 +140,11 @@ def beside_the_losses(study: Study) -> Iterator[str]:
             if name not in needed_by(purchase.needs, prices)
         ]
         if beside:
+            verb = "does" if len(beside) == 1 else "do"
             yield (
                 f"'{shortened(name)}' is always bought and yields {float(component.yields):g}, but"
-                f" {listed(beside)} {'does' if len(beside) == 1 else 'do'} not need it: paid for every"
-                " unit started, also for those that are lost."
+                f" {listed(beside)} {verb} not need it: paid for every unit started, also for those"
+                " that are lost."
             )
 
 

@@ -19,7 +19,7 @@ class Claim:
     treatment: int
     outcome: int
     selected: Nodes
-    """S: it has one value in every row, so it stands in every conditioning set, and costs nothing."""
+    """S: one value in every row, so it stands in every conditioning set, and costs nothing."""
     after: Nodes
     """De(X): the treatment and everything after it."""
     causal: Nodes
@@ -97,7 +97,7 @@ class Roles:
 
 @dataclass(frozen=True, slots=True)
 class Finding:
-    """Something that was found out about a diagram: its kind, a path that shows it, who takes part."""
+    """Something found out about a diagram: its kind, a path that shows it, who takes part."""
 
     kind: str
     path: Path = ()

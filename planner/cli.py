@@ -1,7 +1,7 @@
 """The command line: each command reads, calls one function, reports.
 
-Reports go to stdout, everything else to stderr. Exit 0: a plan; 1: no plan, reported in full; 2: the
-input is at fault.
+Reports go to stdout, everything else to stderr. Exit 0: a plan; 1: no plan, reported in full; 2:
+the input is at fault.
 """
 
 import json
@@ -14,7 +14,6 @@ from pathlib import Path
 from typing import Annotated
 
 import typer
-from rich.console import Console
 
 from costs.faults import FaultyInput
 from planner import whatif
@@ -118,7 +117,9 @@ def recommend(
     changed = what_if(read_study(study, prices=prices), route, records, without, held)
     for remark in (*not_yet_applied(changed), *out_of_date(changed, datetime.now(tz=UTC).date())):
         say(f"note: {remark}")
-    # Imported here, so that help and check do without the solver.
+    # Imported here, so that help and check do without the solver and the layout of reports.
+    from rich.console import Console  # noqa: PLC0415
+
     from planner.planning import recommend as recommended  # noqa: PLC0415
     from planner.report.terminal import print_report  # noqa: PLC0415
     from planner.report.view import view_of  # noqa: PLC0415
@@ -126,17 +127,18 @@ def recommend(
     with progress() as report:
         answer = recommended(changed, seconds=seconds, report=report)
     view = view_of(answer)
-    if as_json:
-        print_json(answer.as_dict())
-    else:
-        print_report(view, Console())
-    if workbook is not None and answer.buy is None:
-        say(f"There is no plan, so {workbook} is not written.")
-    elif workbook is not None and answer.buy is not None:
+    # Files first: whoever looks at the top of the report only has them all the same.
+    if workbook is not None and answer.buy is not None:
         from planner.report.workbook import workbook_bytes  # noqa: PLC0415
 
         write_whole(workbook, workbook_bytes(view, changed, answer.buy), "--workbook")
         say(f"{workbook} is written.")
+    elif workbook is not None:
+        say(f"There is no plan, so {workbook} is not written.")
+    if as_json:
+        print_json(answer.as_dict())
+    else:
+        print_report(view, Console())
     if answer.buy is None:
         raise typer.Exit(NO_PLAN)
 
@@ -171,24 +173,23 @@ def print_summary(path: Path, summary: Summary) -> None:
     rows = {
         "effect": f"{summary.treatment} on {summary.outcome}",
         "records": f"{summary.records:,}",
-        "variables": f"{summary.variables:,}: {summary.measurable:,} measurable, {unmeasurable:,} not;"
-        f" {summary.hidden_common_causes:,} hidden common causes",
+        "variables": f"{summary.variables:,}: {summary.measurable:,} measurable, {unmeasurable:,}"
+        f" not; {summary.hidden_common_causes:,} hidden common causes",
         "arrows": f"{summary.arrows:,}, {summary.arrows_with_strength:,} of them with a strength",
-        "prices": f"{summary.ways:,} ways of measuring, all priced, {summary.free_ways:,} with no price"
-        f" of their own; {summary.components:,} components",
+        "prices": f"{summary.ways:,} ways of measuring, all priced, {summary.free_ways:,} with no"
+        f" price of their own; {summary.components:,} components",
         "timing": f"{summary.timed:,} variables with a time: {', '.join(summary.times)}"
         if summary.timed
         else "no times given",
     }
-    console = Console(soft_wrap=True, markup=False, highlight=False)
-    console.print(f"{path}: no faults.")
-    console.print(summary.title)
+    typer.echo(f"{path}: no faults.")
+    typer.echo(summary.title)
     for heading, text in rows.items():
-        console.print(f"  {heading:<11}{text}")
+        typer.echo(f"  {heading:<11}{text}")
     if summary.remarks:
-        console.print("Worth a second look:")
+        typer.echo("Worth a second look:")
         for remark in summary.remarks:
-            console.print(f"  - {remark}")
+            typer.echo(f"  - {remark}")
 
 
 @contextmanager
@@ -210,11 +211,12 @@ def numpy_left_out() -> Iterator[None]:
 @contextmanager
 def progress() -> Iterator[Callable[[str], None]]:
     """Show what is being worked on, on stderr, where that is a terminal."""
-    console = Console(stderr=True)
-    if not console.is_terminal:
+    if not sys.stderr.isatty():
         yield lambda _: None
         return
-    with console.status("measurewise") as status:
+    from rich.console import Console  # noqa: PLC0415
+
+    with Console(stderr=True).status("measurewise") as status:
         yield lambda text: status.update(f"Searching {text} …")
 
 

@@ -9,6 +9,7 @@ A path is a tuple of nodes; the way its arrows point is looked up in the diagram
 from collections import deque
 from collections.abc import Callable, Collection, Iterable, Iterator, Mapping
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import TypeVar
 
 __all__ = ["Diagram", "Nodes", "Path"]
@@ -199,7 +200,7 @@ class Diagram:
                 return False
         return all(
             one in self.parents[other] or other in self.parents[one]
-            for one, other in zip(path, path[1:], strict=False)
+            for one, other in pairwise(path)
         )
 
 

@@ -1,6 +1,7 @@
 """Findings by name: what the answer says of a diagram, free of node numbers."""
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 from planner.claims import Finding
 from planner.diagram import Diagram, Path
@@ -29,7 +30,7 @@ class Reason:
 
 def trail_of(diagram: Diagram, path: Path) -> Trail:
     """Return a path by name, with the way its arrows point."""
-    steps = zip(path, path[1:], strict=False)
+    steps = pairwise(path)
     forward = tuple(tail in diagram.parents[head] for tail, head in steps)
     return Trail(diagram.named(path), forward)
 

@@ -1,4 +1,4 @@
-"""Answers, as frozen data: full numbers, names and reasons; and the same as plain values for JSON."""
+"""Answers as frozen data, full numbers and reasons; and the same as plain values for JSON."""
 
 from collections.abc import Mapping
 from dataclasses import dataclass

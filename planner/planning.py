@@ -46,7 +46,7 @@ def diagram_of(study: Study) -> Diagram:
     return Diagram.of(causes | {hidden.name: [] for hidden in study.hidden_causes})
 
 
-# ---------------------------------------------------------------------------------------- the search
+# --------------------------------------------------------------------------------------- the search
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -78,7 +78,7 @@ def cheapest(choices: Sequence[Choice], within: Within, seconds: float) -> Answe
     found = cheapest_purchase(
         choices,
         within,
-        lambda program, claim, measurable, opens: ROUTES[claim.route].write_rows(
+        lambda program, claim, measurable, opens: ROUTES[claim.route].rows.write_rows(
             program, claim, measurable, opens
         ),
         seconds,
@@ -103,8 +103,9 @@ def cheapest(choices: Sequence[Choice], within: Within, seconds: float) -> Answe
 def settled(claim: Claim, roles: Roles) -> Roles:
     """Return the roles without anyone who is not needed, the instrument of the smallest name first.
 
-    A proved answer holds nobody who is not needed, since fewer variables win a tie; one that the time
-    cut short may. Which of two candidates is called the instrument must not hang on the solver.
+    A proved answer holds nobody who is not needed, since fewer variables win a tie; one that the
+    time cut short may. Which of two candidates is called the instrument must not hang on the
+    solver.
     """
     route = ROUTES[claim.route]
     for node in reversed(claim.diagram.by_name(roles.everyone)):
@@ -131,7 +132,7 @@ def wanted_ways(found: Found, opened: Iterable[tuple[Claim, Roles]]) -> list[Way
     return [(variable, chosen[variable]) for variable in order]
 
 
-# ---------------------------------------------------------------------------------------- the limits
+# --------------------------------------------------------------------------------------- the limits
 
 
 def limits_of(study: Study) -> dict[str, Fraction]:
@@ -198,7 +199,7 @@ def exceeded(limits: dict[str, Fraction], answer: Answer, prices: PriceList) -> 
     return found
 
 
-# ----------------------------------------------------------------------------------------- the answer
+# --------------------------------------------------------------------------------------- the answer
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -228,8 +229,8 @@ def recommend(
     study
         As ``read_study`` returns it.
     seconds
-        The time for each route; a search that needs more answers with the best plan so far, and says
-        so.
+        The time for each route; a search that needs more answers with the best plan so far, and
+        says so.
     report
         Is told what is being worked on.
 
@@ -282,8 +283,8 @@ def study_status(answer: EffectAnswer, question: Question) -> str:
 def effect_answer(question: Question) -> tuple[EffectAnswer, Buy | None]:
     """Return what can be said of an effect, and the purchase that is recommended for it.
 
-    One program with the choice of the route in it finds the recommendation; the other routes are then
-    searched one by one, for comparison.
+    One program with the choice of the route in it finds the recommendation; the other routes are
+    then searched one by one, for comparison.
     """
     claims = [question.claim(route) for route in question.study.routes]
     open_claims = tuple(claim for claim in claims if settling_reason(claim) is None)
@@ -295,6 +296,8 @@ def effect_answer(question: Question) -> tuple[EffectAnswer, Buy | None]:
     routes = tuple(route_answer(question, claim, best) for claim in claims)
     plans = {each.route: each.plan for each in routes if each.plan is not None}
     recommended = min(plans, key=lambda route: preference(plans[route].buy), default=None)
+    if isinstance(best, Answer) and best.proved:
+        assert recommended == best.opened[0][0].route, "no single search beats the one over all"
     buy = None
     if recommended is not None:
         bound = overall_bound(best, routes)
@@ -336,8 +339,8 @@ def route_answer(question: Question, claim: Claim, best: Answer | NothingFound) 
     Parameters
     ----------
     best
-        What the search over all routes gave: the answer of this route, if it was the one opened, and
-        if nothing fits at all, nothing fits here.
+        What the search over all routes gave: the answer of this route, if it was the one opened,
+        and if nothing fits at all, nothing fits here.
     """
     reason = settling_reason(claim)
     if reason is not None:
@@ -351,7 +354,9 @@ def route_answer(question: Question, claim: Claim, best: Answer | NothingFound) 
     return RouteAnswer(
         route=claim.route,
         status="feasible",
-        reason=reason_of(claim.diagram, ROUTES[claim.route].opened(claim, answer.opened[0][1])),
+        reason=reason_of(
+            claim.diagram, ROUTES[claim.route].reasons.opened(claim, answer.opened[0][1])
+        ),
         plan=plan_of(question, answer),
     )
 
@@ -398,7 +403,7 @@ def closed_route(question: Question, claim: Claim, *, settled: bool) -> RouteAns
 def impossible_route(question: Question, claim: Claim) -> RouteAnswer:
     """Return an impossible route with what stands in its way."""
     measurable = claim.diagram.nodes(question.study.prices.ways)
-    findings = ROUTES[claim.route].hindrances(claim, measurable)
+    findings = ROUTES[claim.route].reasons.hindrances(claim, measurable)
     assert findings, "a route that cannot be taken is hindered by something"
     reason, *witnesses = (reason_of(claim.diagram, finding) for finding in findings)
     return RouteAnswer(
@@ -415,7 +420,7 @@ def plan_of(question: Question, answer: Answer) -> Plan:
         diagram.names[claim.outcome]: Reason("outcome"),
     }
     for node in diagram.by_name(roles.everyone):
-        needed[diagram.names[node]] = reason_of(diagram, route.needed(claim, roles, node))
+        needed[diagram.names[node]] = reason_of(diagram, route.reasons.needed(claim, roles, node))
     left_out = {
         diagram.names[node]: reason_of(diagram, left_out_finding(claim, roles, node))
         for node in diagram.by_name(diagram.nodes(question.study.prices.ways))
@@ -441,4 +446,4 @@ def left_out_finding(claim: Claim, roles: Roles, node: int) -> Finding:
     """Say why a measurable variable is not measured."""
     if node in claim.selected:
         return Finding("selected", (), (node,))
-    return ROUTES[claim.route].left_out(claim, roles, node)
+    return ROUTES[claim.route].reasons.left_out(claim, roles, node)

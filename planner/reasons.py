@@ -1,7 +1,7 @@
 """Reasons that every route shares, found by looking at the diagram, as data.
 
-Each function answers with a ``Finding``: a kind, a path that shows it, and the nodes that take part.
-The words come later.
+Each function answers with a ``Finding``: a kind, a path that shows it, and the nodes that take
+part. The words come later.
 """
 
 from collections.abc import Iterable
@@ -21,7 +21,7 @@ def through(claim: Claim, node: int) -> Path:
 
 
 def after_treatment(claim: Claim, node: int) -> Finding:
-    """Say where a descendant of the treatment lies: on the causal path, below it, or aside of it."""
+    """Say where a descendant of the treatment lies: on the causal path, below it or aside."""
     if node in claim.causal and node != claim.outcome:
         return Finding("on_causal_path", through(claim, node), (node,))
     if node in claim.forbidden:
@@ -54,9 +54,9 @@ def shielded(separations: Iterable[Separation], roles: Roles, node: int) -> Find
     """Say why a node that is not held cannot bias anything.
 
     If the two ends of a separation are both joined to a node by open paths, the node must be a
-    collider between them, and holding it would open a path (``opened_by`` comes first). So every other
-    node is cut off from one end: by itself (``unlinked``), or by what the plan holds (``shielded``:
-    an open path of the node, were nothing held, and who closes it).
+    collider between them, and holding it would open a path (``opened_by`` comes first). So every
+    other node is cut off from one end: by itself (``unlinked``), or by what the plan holds
+    (``shielded``: an open path of the node, were nothing held, and who closes it).
     """
     found = [_shielded(separation, roles, node) for separation in separations]
     return next((each for each in found if each.kind == "shielded"), found[0])

@@ -9,7 +9,7 @@ from math import sqrt
 __all__ = ["MOST_COVARIANCES", "WORDS", "explained_shares", "loadings"]
 
 WORDS = {"weak": 0.1, "moderate": 0.3, "strong": 0.5}
-"""Strengths in words, after Cohen (1988), Statistical Power Analysis, for correlations; from memory."""
+"""Strengths in words, after Cohen (1988) for correlations; from memory."""
 MOST_COVARIANCES = 60_000
 """Covariances worked out before the check gives up, after about a third of a second."""
 
@@ -17,7 +17,7 @@ Causes = Mapping[str, Mapping[str, float | None]]
 
 
 def loadings(strength: float) -> tuple[float, float]:
-    """Return the two arrows of a hidden common cause that induces this correlation: √|s|, sign(s)·√|s|.
+    """Return the arrows of a hidden cause that induces this correlation: √|s|, sign(s)·√|s|.
 
     Examples
     --------

@@ -11,8 +11,8 @@ __all__ = ["conjoined", "drawn", "estimand", "leans_on", "sentence"]
 
 SHARED = {
     # Why a variable is measured.
-    "treatment": "the treatment: the cause that is asked about",
-    "outcome": "the outcome: what it may change",
+    "treatment": "the cause that is asked about",
+    "outcome": "what it may change",
     "closes": "closes {path}",
     "keeps_link": "keeps open what the instrument acts by, {path}",
     "moves": "moves the treatment, {path}",

@@ -50,4 +50,6 @@ def run(capsys: pytest.CaptureFixture[str]) -> Callable[..., Ran]:
 
 def pytest_addoption(parser: pytest.Parser) -> None:
     """Pages that a person has read are renewed only when asked for."""
-    parser.addoption("--update-golden", action="store_true", help="accept the pages as they are now")
+    parser.addoption(
+        "--update-golden", action="store_true", help="accept the pages as they are now"
+    )

@@ -111,7 +111,7 @@ def random_way(rng: random.Random, components: dict[str, Any]) -> dict[str, Any]
     return way
 
 
-# ------------------------------------------------------------------------------------------ diagrams
+# ----------------------------------------------------------------------------------------- diagrams
 
 Drawing = tuple[set[tuple[str, str]], set[str], list[tuple[str, str]]]
 """Arrows, unmeasurable variables, pairs with a hidden common cause."""

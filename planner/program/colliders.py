@@ -13,8 +13,8 @@ def collider_literals(
 ) -> tuple[dict[int, Literal], list[int]]:
     """Return o_v, whether v is conditioned on or has a descendant that is, and who is undecided.
 
-    A node above something that is surely conditioned on is open; a node above nothing that may be is
-    not. Only the others get a variable, and rows that bind it from the side that matters.
+    A node above something that is surely conditioned on is open; a node above nothing that may be
+    is not. Only the others get a variable, and rows that bind it from the side that matters.
     """
     surely = diagram.ancestors(node for node, literal in given.items() if literal is True)
     perhaps = diagram.ancestors(given)

@@ -38,8 +38,8 @@ def connected(
         flow along a node as no collider ≤ 1 − s_v        flow out of a collider ≤ o_v
         flow that ends at a node ≤ end_v                  o_v ≤ s_v + Σ over children of o_c
 
-    A separation can do with marks that are too many; that something *is* open needs a witness, so the
-    inequalities turn round.
+    A separation can do with marks that are too many; that something *is* open needs a witness, so
+    the inequalities turn round.
 
     Parameters
     ----------

@@ -14,10 +14,10 @@ For a given number of units started, a bill is linear in what is bought. ``n₀`
 nothing lossy is bought but what always is; every level ``n_ℓ`` is a larger number that some plan
 needs, and ``beyond_ℓ`` says that the plan needs as many. Losses multiply, so their logarithms add
 up: ``loss_p = −ln yield_p`` and ``room_ℓ = ln(kept₀ · (n_ℓ − 1) / records)``. Both are rounded in
-favour of the plan, so that (1) is never above the exact bill. The bill of an answer is compared with
-(1); where they differ, its level becomes part of the program, or, where rounding hid it, the very
-combination of losses does (7), and the program is solved again. The size of the frame is a level that
-must not be reached.
+favour of the plan, so that (1) is never above the exact bill. The bill of an answer is compared
+with (1); where they differ, its level becomes part of the program, or, where rounding hid it, the
+very combination of losses does (7), and the program is solved again. The size of the frame is a
+level that must not be reached.
 """
 
 from collections.abc import Iterable

@@ -1,8 +1,8 @@
 """Rows that close every path, in a diagram in which arrows may be taken out by choice.
 
-What is conditioned on is itself chosen, so which colliders are open is not known beforehand. The rows
-follow a walk that marks every state (node, way of arrival) that an open path can reach; marking too
-much is never wrong, for it only forbids more.
+What is conditioned on is itself chosen, so which colliders are open is not known beforehand. The
+rows follow a walk that marks every state (node, way of arrival) that an open path can reach;
+marking too much is never wrong, for it only forbids more.
 """
 
 from collections.abc import Collection, Mapping
@@ -92,10 +92,10 @@ def separated(
 
     Notes
     -----
-    Only ancestors of the start, of possible ends and of what may be conditioned on can lie on an open
-    path. A collider is open where it is conditioned on or has a descendant that is (Pearl 1988). The
-    rows count descendants along removed arrows too; no criterion here conditions on a descendant of a
-    node whose arrows it may take out, so that nothing is counted wrongly.
+    Only ancestors of the start, of possible ends and of what may be conditioned on can lie on an
+    open path. A collider is open where it is conditioned on or has a descendant that is (Pearl
+    1988). The rows count descendants along removed arrows too; no criterion here conditions on a
+    descendant of a node whose arrows it may take out, so that nothing is counted wrongly.
     """
     relevant = diagram.ancestors({start, *ends, *given})
     opened, undecided = collider_literals(program, name, diagram, relevant, given)

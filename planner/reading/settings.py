@@ -37,7 +37,7 @@ def read_text(found: Found, key: str) -> str:
 
 
 def read_terms(found: Found, burdens: Mapping[str, Burden]) -> Terms | None:
-    """Return the number of records and what is lost and added; None where the number is at fault."""
+    """Return the number of records, and what is lost and added; None if it is at fault."""
     records = read_records(found["size"]) if "size" in found else None
     if records is None:
         return None
@@ -103,7 +103,7 @@ def read_frame_size(found: Found) -> int | None:
 def read_design_effect(
     found: Found, routes: Collection[str]
 ) -> float | dict[str, float] | ClusterDesign:
-    """Return the design effect of the contrast: a number, one a route, or the clusters behind it."""
+    """Return the design effect of the contrast: a number, one a route, or the clusters."""
     fieldwork = fieldwork_entries(found)
     given = [fieldwork[key] for key in ("design_effect", "clusters") if key in fieldwork]
     if len(given) > 1:

@@ -75,7 +75,7 @@ KEYS = (
 LATER_KEYS = ("effects", "doubts", "rivals", "routes_wanted", "spare", "subgroup")
 WANTED = {
     "effect": "Write 'effect: {treatment: …, outcome: …}'.",
-    "variables": "List the variables of the diagram, each with what causes it and how it is measured.",
+    "variables": "List the variables, each with what causes it and how it is measured.",
     "size": "Write 'size: {records: 400}', the number of complete records.",
 }
 

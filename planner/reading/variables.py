@@ -93,7 +93,7 @@ def read_ways(name: str, place: Located, found: Mapping[str, Located]) -> tuple[
 
 
 def read_spread(found: Mapping[str, Located], key: str) -> float | None:
-    """Return a standard deviation, or the share of yes of a yes/no variable; one excludes the other."""
+    """Return a standard deviation, or the share of yes; one excludes the other."""
     if key not in found:
         return None
     if key == "share" and "sd" in found:
@@ -115,7 +115,7 @@ def read_when(place: Located, waves: Sequence[str]) -> Fraction | None:
     return place.number()
 
 
-# ------------------------------------------------------------------------------- arrows and strengths
+# ----------------------------------------------------------------------------- arrows and strengths
 
 
 def read_causes(place: Located) -> dict[str, tuple[Located, Range | None]]:

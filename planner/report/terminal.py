@@ -85,7 +85,7 @@ def named(notes: Iterable[Note]) -> Table:
 
 
 def measurements(view: View) -> Group:
-    """Return the measurement list: a line of facts for each purchase; under it how it is done and why."""
+    """Return the measurement list: a line of facts for each purchase, then how and why."""
     heads = ("what", "part", "way", "each unit", "set-up")
     facts = [(row.name, row.part, row.way, row.each, row.once) for row in view.bought]
     widths = [
@@ -117,13 +117,13 @@ def bill(view: View) -> Table:
         "per unit": [row.per_unit for row in view.bill],
         "batches": [row.batches for row in view.bill],
         "burdens": [row.burdens for row in view.bill],
-        "amount": [row.amount for row in view.bill],
+        f"amount {view.currency}".strip(): [row.amount for row in view.bill],
     }
     shown = {heading: cells for heading, cells in columns.items() if any(cells)}
-    table = Table(box=None, padding=(0, 2, 0, 0), show_edge=False, header_style="italic")
-    table.add_column("line", overflow="fold")
+    table = Table(box=None, padding=(0, 1, 0, 0), show_edge=False, header_style="italic")
+    table.add_column("line", overflow="fold", min_width=12)
     for heading in shown:
-        table.add_column(heading, justify="right", overflow="fold")
+        table.add_column(heading, justify="right", no_wrap=True)
     for number, row in enumerate(view.bill):
         last = number == len(view.bill) - 1
         cells = [Text(cells[number]) for cells in shown.values()]

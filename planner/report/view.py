@@ -6,7 +6,7 @@ from fractions import Fraction
 
 from costs.bill import Line
 from costs.prices import Purchase
-from planner.plan import Buy, EffectAnswer, Plan, Recommendation, RouteAnswer
+from planner.plan import Buy, EffectAnswer, Exceeded, Plan, Recommendation, RouteAnswer
 from planner.report.numbers import counted, money, percent, plain
 from planner.routes import ROUTES
 from planner.study import Effect, Study
@@ -82,6 +82,7 @@ class View:
     leans_on: tuple[str, ...]
     cautions: tuple[str, ...]
     bill: tuple[BillRow, ...]
+    currency: str
     burdens: tuple[Note, ...]
     routes: tuple[RouteRow, ...]
     left_out: tuple[Note, ...]
@@ -106,7 +107,8 @@ def view_of(answer: Recommendation) -> View:
         never=notes(plan, effect, shown.route, only_never=True) if plan and shown else (),
         leans_on=leans_on(shown.route, effect) if shown else (),
         cautions=tuple(cautions(buy, study)) if buy else (),
-        bill=tuple(bill_rows(buy, study)) if buy else (),
+        bill=tuple(bill_rows(buy)) if buy else (),
+        currency=study.currency,
         burdens=tuple(burden_notes(buy, study)) if buy else (),
         routes=tuple(route_row(each, effect, study) for each in effect_answer.routes),
         left_out=notes(plan, effect, shown.route, only_never=False) if plan and shown else (),
@@ -116,7 +118,7 @@ def view_of(answer: Recommendation) -> View:
 
 
 def shown_route(answer: EffectAnswer) -> RouteAnswer | None:
-    """Return the recommended route, or the one whose plan comes nearest; None where there is none."""
+    """Return the recommended route, or the one that comes nearest; None if there is none."""
     if answer.recommended is not None:
         return answer.answer(answer.recommended)
     beyond = [(each.beyond.buy.bill.total, each) for each in answer.routes if each.beyond]
@@ -133,7 +135,7 @@ def subject(study: Study, effect: Effect) -> str:
     )
 
 
-# ---------------------------------------------------------------------------------------- the answer
+# --------------------------------------------------------------------------------------- the answer
 
 
 def answer_sentences(answer: Recommendation, effect_answer: EffectAnswer) -> Iterable[str]:
@@ -185,8 +187,8 @@ def proof(study: Study, buy: Buy) -> str:
     gap = percent(1 - buy.lower_bound / buy.bill.total) if buy.bill.total else percent(Fraction(0))
     bound = price_of(buy.lower_bound, study)
     return (
-        f"This is the best plan found in the time given. No plan costs less than {bound}, so at most"
-        f" {gap} could still be saved."
+        f"This is the best plan found in the time given. No plan costs less than {bound}, so at"
+        f" most {gap} could still be saved."
     )
 
 
@@ -194,8 +196,8 @@ def weak_instrument(study: Study, answer: EffectAnswer, route: RouteAnswer) -> I
     """Return what a weak instrument costs in records, and the best other route beside it."""
     yield (
         "Mind the instrument: to be as precise as adjusting for covariates it takes 1/ρ² times the"
-        " records, where ρ is the correlation of instrument and treatment: 4 times as many at 0.5, 25"
-        f" times at 0.2, 100 times at 0.1. {study.terms.records:,} records may be far too few."
+        " records, where ρ is the correlation of instrument and treatment: 4 times as many at 0.5,"
+        f" 25 times at 0.2, 100 times at 0.1. {study.terms.records:,} records may be far too few."
     )
     others = [each for each in answer.routes if each.plan and each is not route]
     if others:
@@ -209,17 +211,27 @@ def over_limits(answer: RouteAnswer, effect: Effect, study: Study) -> str:
     """Return what stands in the way of a route, and what would be needed."""
     if answer.status != "over_limits" or not answer.exceeds:
         return sentence(answer.reason, effect, answer.route)
-    needs = [
-        f"{each.limit} {amount(each.limit, each.needed, study)}, where"
-        f" {amount(each.limit, each.allowed, study)} is allowed"
-        for each in answer.exceeds
-    ]
-    return f"it would take {'; or '.join(needs)}."
+    return f"it would take {'; or '.join(needed(each, study) for each in answer.exceeds)}."
 
 
-def amount(limit: str, value: Fraction, study: Study) -> str:
-    """Return an amount of a limit, in its unit."""
-    return price_of(value, study) if limit == "budget" else plain(value)
+def needed(each: Exceeded, study: Study) -> str:
+    """Return what would be needed of a limit, and what is allowed."""
+    match each.limit:
+        case "budget":
+            more, most = price_of(each.needed, study), price_of(each.allowed, study)
+            return f"a budget of {more}, where {most} is allowed"
+        case "frame_size":
+            return f"a frame of {plain(each.needed)} units, where there are {plain(each.allowed)}"
+        case "least_reliability":
+            return (
+                f"readings of reliability {plain(each.needed)}, where {plain(each.allowed)} is the"
+                " least allowed"
+            )
+        case limit:
+            name = limit.removeprefix("burdens.")
+            label = study.terms.burdens[name].label or name
+            most = plain(each.allowed)
+            return f"{plain(each.needed)} {label} per {study.unit}, where {most} is allowed"
 
 
 def price_of(total: Fraction, study: Study) -> str:
@@ -227,7 +239,7 @@ def price_of(total: Fraction, study: Study) -> str:
     return f"{money(total)} {study.currency}".strip()
 
 
-# ---------------------------------------------------------------------------------- what is measured
+# --------------------------------------------------------------------------------- what is measured
 
 
 def bought_rows(plan: Plan, route: str, effect: Effect, study: Study) -> Iterable[Bought]:
@@ -239,7 +251,7 @@ def bought_rows(plan: Plan, route: str, effect: Effect, study: Study) -> Iterabl
             name=variable,
             part=plan.role(variable) or reason.kind,
             way=way,
-            how=purchase.label,
+            how=purchase.label or study.variables[variable].label,
             each=price_each(purchase, study),
             once=money(purchase.setup),
             why=sentence(reason, effect, route),
@@ -262,8 +274,8 @@ def legend(plan: Plan) -> tuple[str, ...]:
     if all(reason.kind != "closes" for reason in plan.needed.values()):
         return ()
     return (
-        "An arrow points from cause to effect. To close a path is to adjust for a variable on it, so"
-        " that what it carries is not taken for an effect of the treatment.",
+        "An arrow points from cause to effect. To close a path is to adjust for a variable on it,"
+        " so that what it carries is not taken for an effect of the treatment.",
     )
 
 
@@ -306,7 +318,7 @@ def notes(plan: Plan, effect: Effect, route: str, *, only_never: bool) -> tuple[
 # -------------------------------------------------------------------------------- money and burdens
 
 
-def bill_rows(buy: Buy, study: Study) -> Iterable[BillRow]:
+def bill_rows(buy: Buy) -> Iterable[BillRow]:
     """Return the bill, line by line, and its total."""
     for line in buy.bill.lines:
         yield bill_row(line)
@@ -317,7 +329,7 @@ def bill_rows(buy: Buy, study: Study) -> Iterable[BillRow]:
         per_unit="",
         batches="",
         burdens="",
-        amount=price_of(buy.bill.total, study),
+        amount=money(buy.bill.total),
     )
 
 
@@ -364,8 +376,8 @@ def cautions(buy: Buy, study: Study) -> Iterable[str]:
     risky += [name for name in buy.bill.components if study.prices.components[name].care]
     for name in risky:
         yield (
-            f"{name}: this can hurt someone. Local rules, ethics review and licensed practice decide"
-            " whether it is done and how; this plan does not."
+            f"{name}: this can hurt someone. Local rules, ethics review and licensed practice"
+            " decide whether it is done and how; this plan does not."
         )
 
 
@@ -403,8 +415,8 @@ def closing_notes(study: Study, buy: Buy | None) -> Iterable[str]:
         yield losses(study, buy)
         yield read_without_error(study, buy)
     yield (
-        f"Whether {counted(study.terms.records, 'record')} are enough is not worked out here: this is"
-        " the cheapest plan for that number."
+        f"Whether {counted(study.terms.records, 'record')} are enough is not worked out here: this"
+        " is the cheapest plan for that number."
     )
     yield "All planned analyses are linear."
     yield "Everything rests on the diagram: a missing arrow can undo any route."

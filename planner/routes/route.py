@@ -1,7 +1,8 @@
-"""What a route has to offer; each folder beside this file offers it once."""
+"""What a route has to offer: a folder whose modules hold the functions named here."""
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
+from typing import Protocol
 
 from planner.claims import Claim, Finding, Roles
 from planner.diagram import Nodes
@@ -21,37 +22,61 @@ class Words:
     title: str
     """The route's name in a sentence, after "by"."""
     analysis: str
-    """What is done with the readings; takes ``{instruments}``, ``{mediators}``, and ``{covariates}``."""
+    """What is done; takes ``{instruments}``, ``{mediators}`` and ``{covariates}``."""
     bare_analysis: str
     """The same where there are no covariates."""
     estimand: str
     leans_on: tuple[str, ...]
     """What must be true and cannot be seen in the data; each a clause in plain words."""
     sentences: Mapping[str, str]
-    """A sentence for each kind of finding that is this route's own, or that it words its own way."""
+    """A sentence for each kind of finding that this route words its own way."""
+
+
+class Criterion(Protocol):
+    """What ``criterion.py`` offers: the conditions of the route, checked without a solver."""
+
+    def candidates(self, claim: Claim, measurable: Nodes) -> Roles:
+        """Return who may play which role in a cheapest plan, among the measurable nodes."""
+
+    def breaches(self, claim: Claim, roles: Roles) -> Iterator[Finding]:
+        """Return each condition that the roles fail; none if they are valid."""
+
+
+class Rows(Protocol):
+    """What ``rows.py`` offers: the same conditions as rows of the integer program."""
+
+    def write_rows(
+        self, program: Program, claim: Claim, measurable: Nodes, opens: Literal
+    ) -> RoleLiterals:
+        """Write the rows, which bind where the claim is opened; return the roles."""
+
+
+class Reasons(Protocol):
+    """What ``reasons.py`` offers: why each variable is in a plan or not, and why there is none."""
+
+    def opened(self, claim: Claim, roles: Roles) -> Finding:
+        """Say what opens the route."""
+
+    def needed(self, claim: Claim, roles: Roles, node: int) -> Finding:
+        """Say what would go wrong without one of the roles."""
+
+    def left_out(self, claim: Claim, roles: Roles, node: int) -> Finding:
+        """Say why another measurable node is not wanted."""
+
+    def hindrances(self, claim: Claim, measurable: Nodes) -> tuple[Finding, ...]:
+        """Say why the route cannot be taken, whatever is bought; nothing if it can."""
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
 class Route:
-    """A way to learn an effect, as functions of a claim."""
+    """A way to learn an effect: the modules of its folder, under one name."""
 
     name: str
-    candidates: Callable[[Claim, Nodes], Roles]
-    """Who may play which role in a cheapest plan, among the measurable nodes."""
-    breaches: Callable[[Claim, Roles], Iterator[Finding]]
-    """The conditions that roles fail; none if they are valid. Knows no solver."""
-    write_rows: Callable[[Program, Claim, Nodes, Literal], RoleLiterals]
-    """The same conditions as rows of the integer program."""
-    opened: Callable[[Claim, Roles], Finding]
-    """What opens the route."""
-    needed: Callable[[Claim, Roles, int], Finding]
-    """What would go wrong without one of the roles."""
-    left_out: Callable[[Claim, Roles, int], Finding]
-    """Why another measurable node is not wanted."""
-    hindrances: Callable[[Claim, Nodes], tuple[Finding, ...]]
-    """Why the route cannot be taken, whatever is bought."""
+    criterion: Criterion
+    rows: Rows
+    reasons: Reasons
     words: Words
 
     def is_valid(self, claim: Claim, roles: Roles) -> bool:
         """Say whether the roles open the route: the plain check that every answer has to pass."""
-        return next(self.breaches(claim, roles), None) is None
+        return next(self.criterion.breaches(claim, roles), None) is None

@@ -2,9 +2,10 @@
 
     python tests/benchmarks/sparse_studies.py [--sizes 30 100 300] [--seeds 5]
 
-The yardstick is the bare import of the solver in a fresh process, measured in the same run: it grows
-and shrinks with the machine, so that ratios can be compared between machines. All three routes are
-searched in each study; half of the studies have a hidden common cause of treatment and outcome.
+The yardstick is the bare import of the solver in a fresh process, measured in the same run: it
+grows and shrinks with the machine, so that ratios can be compared between machines. All three
+routes are searched in each study; half of the studies have a hidden common cause of treatment and
+outcome.
 """
 
 import argparse

@@ -1,5 +1,6 @@
 """Diagrams with known answers, from the literature and from trying all subsets; sources in the file."""
 
+from fractions import Fraction
 from itertools import chain, combinations
 from typing import Any
 
@@ -7,7 +8,6 @@ import pytest
 import yaml
 
 from costs.prices import PriceList, Terms, Way
-from fractions import Fraction
 from planner.claims import Claim, Roles
 from planner.diagram import Diagram
 from planner.planning import cheapest
@@ -39,13 +39,17 @@ def is_valid(example: dict[str, Any], route: str, **roles: list[str]) -> bool:
 
 def candidates(example: dict[str, Any]) -> list[str]:
     """What can be measured besides treatment and outcome."""
-    return [n for n in example["nodes"].split() if n not in {"t", "y", *example["unmeasurable"].split()}]
+    return [
+        n for n in example["nodes"].split() if n not in {"t", "y", *example["unmeasurable"].split()}
+    ]
 
 
 def subsets(names: list[str]) -> list[list[str]]:
     """Every subset, smaller ones first."""
     sizes = range(len(names) + 1)
-    return [list(each) for each in chain.from_iterable(combinations(sorted(names), n) for n in sizes)]
+    return [
+        list(each) for each in chain.from_iterable(combinations(sorted(names), n) for n in sizes)
+    ]
 
 
 @every_example
@@ -95,7 +99,9 @@ def test_instruments_are_the_known_ones(example: dict[str, Any]) -> None:
             if is_valid(example, "instrument", instruments=[z], covariates=each)
         ]
         found += [(z, sorted(w)) for w in valid if not any(other < w for other in valid)]
-    assert sorted(found) == sorted((each["instrument"], each["given"]) for each in example["instruments"])
+    assert sorted(found) == sorted(
+        (each["instrument"], each["given"]) for each in example["instruments"]
+    )
 
 
 @every_example

@@ -1,8 +1,8 @@
 """The integer program against trying everything, on 500 random studies.
 
-``enumeration.py`` shares no code with the packages: separation is networkx's, bills and criteria are
-written out anew. Every answer is compared in full: status, total, units started, who is measured in
-which way, and which route is recommended.
+``enumeration.py`` shares no code with the packages: separation is networkx's, bills and criteria
+are written out anew. Every answer is compared in full: status, total, units started, who is
+measured in which way, and which route is recommended.
 """
 
 from collections import Counter
@@ -141,7 +141,9 @@ def test_the_500_studies_ask_for_everything(capsys: pytest.CaptureFixture[str]) 
         company = {
             route: set(best.measure) - {x, y} for route, best in without.items() if best is not None
         }
-        counts["conditioning needs two or more covariates"] += len(company.get("conditioning", ())) > 1
+        counts["conditioning needs two or more covariates"] += (
+            len(company.get("conditioning", ())) > 1
+        )
         counts["an instrument needs a covariate"] += len(company.get("instrument", ())) > 1
         counts["a mechanism needs a covariate or two mediators"] += (
             len(company.get("mechanism", ())) > 1

@@ -87,5 +87,9 @@ def bought(answer: dict[str, Any]) -> list[Any]:
     (effect,) = answer["effects"]
     return [
         effect["recommended"],
-        *((each["plan"]["roles"], each["plan"]["buy"]["measure"]) for each in effect["routes"] if each["plan"]),
+        *(
+            (each["plan"]["roles"], each["plan"]["buy"]["measure"])
+            for each in effect["routes"]
+            if each["plan"]
+        ),
     ]

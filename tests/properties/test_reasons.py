@@ -6,6 +6,7 @@ bias, or must not be held; every witness that a route is impossible stands up.
 
 from collections import Counter
 from collections.abc import Callable, Iterable
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -52,7 +53,9 @@ class Checker:
         """What is conditioned on."""
         return (set(plan.covariates) - {without}) | self.selected
 
-    def sides(self, route: str, plan: Plan, without: str = "") -> Iterable[tuple[nx.DiGraph, set[str]]]:
+    def sides(
+        self, route: str, plan: Plan, without: str = ""
+    ) -> Iterable[tuple[nx.DiGraph, set[str]]]:
         """The diagrams in which a plan closes paths, with what is held there."""
         given = self.given(plan, without)
         if route in ("conditioning", "instrument"):
@@ -235,12 +238,12 @@ class Checker:
 
 def is_there(graph: nx.DiGraph, path: tuple[str, ...]) -> bool:
     """Whether every step of a path is an arrow of the diagram, either way."""
-    return all(graph.has_edge(a, b) or graph.has_edge(b, a) for a, b in zip(path, path[1:], strict=False))
+    return all(graph.has_edge(a, b) or graph.has_edge(b, a) for a, b in pairwise(path))
 
 
 def is_directed(graph: nx.DiGraph, path: tuple[str, ...]) -> bool:
     """Whether a path follows the arrows."""
-    return len(path) > 1 and all(graph.has_edge(a, b) for a, b in zip(path, path[1:], strict=False))
+    return len(path) > 1 and all(graph.has_edge(a, b) for a, b in pairwise(path))
 
 
 def test_every_reason_is_true(

@@ -1,21 +1,21 @@
 """With additive prices the cheapest conditioning set is a minimum vertex cut in the moral graph.
 
-Smucler & Rotnitzky (2022), Journal of Causal Inference 10, 174-189; van der Zander, Liśkiewicz & Textor
-(2019), Artificial Intelligence 270. The cut is found by networkx's maximum flow.
+Smucler & Rotnitzky (2022), Journal of Causal Inference 10, 174-189; van der Zander, Liśkiewicz &
+Textor (2019), Artificial Intelligence 270. The cut is found by networkx's maximum flow.
 """
 
 import random
+from fractions import Fraction
 from math import inf
 
 import networkx as nx
 import pytest
 
+from costs.prices import PriceList, Terms, Way
 from planner.claims import Claim
 from planner.diagram import Diagram
 from planner.planning import cheapest
 from planner.program import Choice, NothingFound, Within
-from costs.prices import PriceList, Terms, Way
-from fractions import Fraction
 
 SIZE = 14
 
@@ -75,6 +75,8 @@ def test_the_program_finds_the_minimum_cut(capsys: pytest.CaptureFixture[str]) -
         assert value == cut_value(causes, priced), seed
         values.append(value)
     with capsys.disabled():
-        print(f"\n    minimum cuts: {sum(0 < v < inf for v in values)} of {len(values)} cost something")
+        print(
+            f"\n    minimum cuts: {sum(0 < v < inf for v in values)} of {len(values)} cost something"
+        )
     assert sum(0 < value < inf for value in values) >= 50
     assert inf in values

@@ -16,7 +16,8 @@ WORDS = Words(
         " (positivity)",
     ),
     sentences={
-        "back_doors_closed": "adjusting for {all} closes every path that would mix other causes in.",
+        "back_doors_closed": "adjusting for {all} closes every path that would mix other causes"
+        " in.",
         "back_doors_closed:none": "no path mixes other causes in; there is nothing to adjust for.",
         "back_door_open": "the path {path} stays open whatever is measured.",
         "back_door_open:some": "some path stays open whatever is measured; adjusting for everything"

@@ -47,9 +47,9 @@ def left_out(claim: Claim, roles: Roles, node: int) -> Finding:
 def hindrances(claim: Claim, measurable: Nodes) -> tuple[Finding, ...]:
     """Return the nearest miss, then for each candidate the first condition that it fails.
 
-    Conditions in order: it comes before the treatment; some covariates close its paths to the outcome
-    (if any do, so do all that can be measured among the ancestors of the two); it is linked to the
-    treatment at all; the link survives those covariates.
+    Conditions in order: it comes before the treatment; some covariates close its paths to the
+    outcome (if any do, so do all that can be measured among the ancestors of the two); it is linked
+    to the treatment at all; the link survives those covariates.
     """
     people = measurable - claim.ends - claim.selected
     if not people:

@@ -16,8 +16,8 @@ WORDS = Words(
         "the instrument moves {treatment} strongly (first stage)",
     ),
     sentences={
-        "instrument_found": "{all} moves the treatment, {path}, and no other open path leads from it"
-        " to the outcome.",
+        "instrument_found": "{all} moves the treatment, {path}, and no other open path leads from"
+        " it to the outcome.",
         "no_instrument": "no variable can be the instrument; {who} comes closest.",
         "no_candidate": "nothing but treatment and outcome can be measured.",
         "comes_after": "{who} follows from the treatment, {path}.",

@@ -1,6 +1,6 @@
 """Why the mechanism needs each variable, does not need the others, or cannot be taken."""
 
-from planner.claims import Claim, Finding, Roles, Separation
+from planner.claims import Claim, Finding, Roles
 from planner.diagram import Nodes, Path
 from planner.reasons import after_treatment, opened_by, shielded, through
 from planner.routes.mechanism.criterion import breaches, candidates, separations
@@ -33,22 +33,22 @@ def left_out(claim: Claim, roles: Roles, node: int) -> Finding:
 
 
 def hindrances(claim: Claim, measurable: Nodes) -> tuple[Finding, ...]:
-    """Return a directed path that cannot be carried by mediators, and the back doors that see to it.
+    """Return a directed path that mediators cannot carry, and the back doors that see to it.
 
     With everything held that can be, mediators are given up one by one while a back door of theirs
-    stays open; what is left is the largest set without one (a smaller set only puts arrows back). If
-    it misses a directed path, that path is the first finding, and the back door of each measurable
-    mediator on it follows.
+    stays open; what is left is the largest set without one (a smaller set only puts arrows back).
+    If it misses a directed path, that path is the first finding, and the back door of each
+    measurable mediator on it follows.
     """
     able = candidates(claim, measurable)
     left, open_doors = able.mediators, dict[int, Finding]()
     while left:
         roles = Roles(mediators=left, covariates=able.covariates)
+        doors = {node: back_door(claim, roles, node) for node in left}
         given_up = {
             node: Finding("mediator_back_door", path, (node,))
-            for separation in separations(claim, roles)
-            for node in left
-            if (path := back_door(separation, node))
+            for node, path in doors.items()
+            if path
         }
         if not given_up:
             break
@@ -57,12 +57,15 @@ def hindrances(claim: Claim, measurable: Nodes) -> tuple[Finding, ...]:
     path = claim.diagram.directed_path(claim.treatment, {claim.outcome}, left)
     if path is None:
         return ()
-    doors = tuple(open_doors[node] for node in path if node in open_doors)
-    return (Finding("unmediated", path, tuple(door.nodes[0] for door in doors)), *doors)
+    on_path = [node for node in path if node in open_doors]
+    return (Finding("unmediated", path, tuple(on_path)), *(open_doors[node] for node in on_path))
 
 
-def back_door(separation: Separation, node: int) -> Path | None:
-    """Return a path that joins a mediator to the other end of a separation."""
-    if node in separation.starts:
-        return separation.diagram.open_path({node}, separation.ends, separation.given)
-    return separation.diagram.open_path(separation.starts, {node}, separation.given)
+def back_door(claim: Claim, roles: Roles, node: int) -> Path | None:
+    """Return a shortest open path from a mediator to the treatment or the outcome."""
+    before, behind = separations(claim, roles)
+    paths = (
+        before.diagram.open_path(before.starts, {node}, before.given),
+        behind.diagram.open_path({node}, behind.ends, behind.given),
+    )
+    return min(filter(None, paths), key=len, default=None)

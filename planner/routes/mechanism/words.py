@@ -15,13 +15,15 @@ WORDS = Words(
         "every value of the mediators occurs with much and with little of {treatment} (positivity)",
     ),
     sentences={
-        "mediated": "{all} carries the whole effect, as in {path}, and its own back doors are closed.",
-        "mediated:several": "{all} together carry the whole effect, as in {path}, and their own back"
-        " doors are closed.",
+        "mediated": "{all} carries the whole effect, as in {path}, and its own back doors are"
+        " closed.",
+        "mediated:several": "{all} together carry the whole effect, as in {path}, and their own"
+        " back doors are closed.",
         "carried": "{others} already carries {path}; adjusting for it would take that away",
         "unmediated": "nothing on the directed path {path} can be measured.",
         "unmediated:some": "no set of mediators will do: on the directed path {path} a back door of"
         " {all} stays open.",
-        "mediator_back_door": "{who} has the back door {path}, which stays open whatever is measured.",
+        "mediator_back_door": "{who} has the back door {path}, which stays open whatever is"
+        " measured.",
     },
 )
