@@ -159,8 +159,10 @@ def route_values(answer: RouteAnswer, effect: Effect, study: Study) -> dict[str,
         "route": answer.route,
         "status": answer.status,
         "estimand": estimand(answer.route, study),
-        "reason": reason_values(answer.reason, effect, answer.route),
-        "witnesses": [reason_values(each, effect, answer.route) for each in answer.witnesses],
+        "reason": reason_values(answer.reason, effect, answer.route, study),
+        "witnesses": [
+            reason_values(each, effect, answer.route, study) for each in answer.witnesses
+        ],
         "plan": plan(answer.plan),
         "beyond": plan(answer.beyond),
         "exceeds": [
@@ -174,13 +176,13 @@ def route_values(answer: RouteAnswer, effect: Effect, study: Study) -> dict[str,
     }
 
 
-def reason_values(reason: Reason, effect: Effect, route: str) -> dict[str, object]:
+def reason_values(reason: Reason, effect: Effect, route: str, study: Study) -> dict[str, object]:
     """Return a reason with its words."""
     return {
         "kind": reason.kind,
         "path": list(reason.trail.names),
         "variables": list(reason.variables),
-        "text": sentence(reason, effect, route),
+        "text": sentence(reason, effect, route, study.unmeasurable),
     }
 
 
@@ -189,7 +191,7 @@ def plan_values(plan: Plan, route: str, effect: Effect, study: Study) -> dict[st
 
     def each(reasons: Mapping[str, Reason]) -> list[dict[str, object]]:
         return [
-            {"variable": name, **reason_values(reason, effect, route)}
+            {"variable": name, **reason_values(reason, effect, route, study)}
             for name, reason in reasons.items()
         ]
 

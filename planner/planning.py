@@ -386,15 +386,15 @@ def closed_route(question: Question, claim: Claim, *, settled: bool) -> RouteAns
         for limit, found in helping.items()
     ]
     plans = [plan_of(question, found) for found in helping.values()]
+    kind = "over_limits" if settled else "out_of_time"
     if not plans and isinstance(unlimited, Answer):
         exceeds = exceeded(limits, unlimited, prices)
         plans = [plan_of(question, unlimited)]
+        kind = "over_limits_together" if settled else "out_of_time"
     return RouteAnswer(
         route=claim.route,
         status="over_limits",
-        reason=Reason("over_limits", variables=tuple(each.limit for each in exceeds))
-        if settled
-        else Reason("out_of_time"),
+        reason=Reason(kind, variables=tuple(each.limit for each in exceeds)),
         beyond=min(plans, key=lambda plan: preference(plan.buy), default=None),
         exceeds=tuple(exceeds),
     )

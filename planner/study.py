@@ -141,8 +141,6 @@ class Study:
     """What was asked for on the command line in place of what the files say."""
 
     @property
-    def is_lossless(self) -> bool:
-        """Whether every unit started is taken to give a usable record."""
-        ways = [way for named in self.prices.ways.values() for way in named.values()]
-        yields = [each.yields for each in (*ways, *self.prices.components.values())]
-        return self.terms.usable == 1 and all(share == 1 for share in yields)
+    def unmeasurable(self) -> frozenset[str]:
+        """The variables that no way measures."""
+        return frozenset(name for name in self.variables if name not in self.prices.ways)

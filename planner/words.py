@@ -1,6 +1,6 @@
 """Plain words for findings, routes and limits; the only place that words a reason."""
 
-from collections.abc import Iterable
+from collections.abc import Collection, Iterable
 from itertools import zip_longest
 
 from planner.findings import Reason, Trail
@@ -11,43 +11,50 @@ __all__ = ["conjoined", "drawn", "estimand", "leans_on", "sentence"]
 
 SHARED = {
     # Why a variable is measured.
-    "treatment": "the cause that is asked about",
-    "outcome": "what it may change",
-    "closes": "closes {path}",
-    "keeps_link": "keeps open what the instrument acts by, {path}",
-    "moves": "moves the treatment, {path}",
-    "carries": "carries {path}",
+    "treatment": "the cause in question",
+    "outcome": "what {treatment} may change",
+    "carries": "a step by which the effect works, {path}",
     # Why a variable is left out.
-    "on_causal_path": "lies on the way of the effect, {path}; adjusting for it would take part of"
-    " the effect away",
-    "below_causal_path": "follows from what the treatment changes, {path}; adjusting for it would"
-    " distort the effect",
-    "after_treatment": "follows from the treatment, {path}",
-    "opens": "adjusting for it would open {path}, which is closed as it is",
-    "cuts_link": "adjusting for it would cut what the instrument acts by, {path}",
+    "on_causal_path": "is a step by which the effect works, {path}; adjusting for it would take"
+    " part of the effect away",
+    "below_causal_path": "is a result of what {treatment} changes, {path}; comparing units alike in"
+    " it makes the estimate wrong",
+    "after_treatment": "is a result of {treatment}, {path}",
+    "opens": "adjusting for it would let {path} pass for an effect, which it does not as it is",
     "unlinked": "no path along which it could mislead leads to {others}",
-    "shielded": "adjusting for {others} already closes {path}",
+    "shielded": "adjusting for {others} already stops {path}",
     "selected": "has one and the same value in every row",
     # Why a whole route, or all of them, cannot be taken.
     "no_directed_path": "No directed path leads from {treatment} to {outcome}: by this diagram the"
     " effect is zero. Nine times in ten an arrow was forgotten.",
-    "selection_after_treatment": "The rows are selected after the treatment, {path}: no analysis of"
-    " the selected rows alone gives the effect.",
-    "over_limits": "The route is open, but only beyond {all}.",
-    "out_of_time": "No plan within the limits was found in the time given, and none was ruled out.",
+    "selection_after_treatment": "the rows are selected by a result of {treatment}, {path}: no"
+    " analysis of the selected rows alone gives the effect.",
+    "over_limits": "the route is open, but only beyond one of the limits {all}.",
+    "over_limits:one": "the route is open, but only beyond the limit {all}.",
+    "over_limits_together": "the route is open, but only beyond all of the limits {all}.",
+    "out_of_time": "no plan within the limits was found in the time given, and none was ruled out.",
 }
 """A sentence for each kind of finding that is no single route's own."""
 
 
-def drawn(trail: Trail) -> str:
-    """Return a path as text, such as ``x ← c → y``.
+def drawn(trail: Trail, unmeasurable: Collection[str] = ()) -> str:
+    """Return a path as text; what cannot be measured stands in brackets.
 
     Examples
     --------
-    >>> drawn(Trail(("x", "hidden common cause of x and y", "y"), (False, True)))
-    'x ← hidden common cause → y'
+    >>> drawn(Trail(("x", "hidden common cause of x and c", "c", "y"), (False, True, True)))
+    'x ← (hidden common cause) → c → y'
+    >>> drawn(Trail(("x", "u", "y"), (False, True)), {"u"})
+    'x ← (u) → y'
     """
-    names = ["hidden common cause" if name.startswith(HIDDEN) else name for name in trail.names]
+    names = [
+        "(hidden common cause)"
+        if name.startswith(HIDDEN)
+        else f"({name})"
+        if name in unmeasurable
+        else name
+        for name in trail.names
+    ]
     arrows = [" → " if forward else " ← " for forward in trail.forward]
     return "".join(word for pair in zip_longest(names, arrows, fillvalue="") for word in pair)
 
@@ -64,7 +71,9 @@ def conjoined(names: Iterable[str]) -> str:
     return " and ".join(filter(None, [", ".join(names[:-1]), *names[-1:]]))
 
 
-def sentence(reason: Reason, effect: Effect, route: str | None = None) -> str:
+def sentence(
+    reason: Reason, effect: Effect, route: str | None = None, unmeasurable: Collection[str] = ()
+) -> str:
     """Return a reason in words, as the route words it where it does so itself.
 
     A kind may be worded differently for no variable, one, several, or any.
@@ -75,7 +84,7 @@ def sentence(reason: Reason, effect: Effect, route: str | None = None) -> str:
     own = ROUTES[route].words.sentences if route else {}
     template = next(words[key] for words in (own, SHARED) for key in keys if key in words)
     return template.format(
-        path=drawn(reason.trail),
+        path=drawn(reason.trail, unmeasurable),
         who=reason.variables[0] if count else "",
         others=conjoined(reason.variables[1:]),
         all=conjoined(reason.variables),

@@ -73,7 +73,7 @@ def test_no_plan_gives_exit_code_1_and_a_full_report(
     ran = run("recommend", path)
     assert ran.code == 1
     assert "No route leads to this effect with what can be measured." in ran.out
-    assert "x ← hidden common cause → y" in ran.out
+    assert "x ← (hidden common cause) → y" in ran.out
     assert json.loads(run("recommend", path, "--json").out)["status"] == "impossible"
 
 

@@ -78,7 +78,7 @@ def test_the_answer_comes_first(run: Callable[..., Ran]) -> None:
     headings = [line for line in page.splitlines() if line.isupper() and not line.startswith(" ")]
     assert headings == [
         "ANSWER",
-        "WHAT TO MEASURE",
+        "WHAT TO BUY",
         "DO NOT ADJUST FOR",
         "WHAT IT LEANS ON",
         "THE BILL",
@@ -91,6 +91,11 @@ def test_the_answer_comes_first(run: Callable[..., Ran]) -> None:
 
 def test_an_instrument_comes_with_its_price_in_records(run: Callable[..., Ran]) -> None:
     page = " ".join(run("recommend", ROOT / "examples" / "tariff.yaml").out.split())
-    before, _, _ = page.partition("WHAT TO MEASURE")
+    before, _, _ = page.partition("WHAT TO BUY")
     assert "1/ρ² times the records" in before
-    assert "The best other route is the mechanism: 22,725.00 EUR." in before
+    assert "1,600 records (62,436.00 EUR) if ρ is 0.5" in before
+    assert "40,000 records (more than the frame holds) if ρ is 0.1" in before
+    assert before.endswith(
+        "The best other route, the mechanism, would be to follow the effect through shift, adjusting for"
+        " electric_heat: 22,725.00 EUR. "
+    )

@@ -46,7 +46,9 @@ def test_the_measurement_list_is_that_of_the_plan(run: Callable[..., Ran], tmp_p
     assert plan is not None
     assert [row[0] for row in rows] == [*plan.buy.measure, *plan.buy.bill.components]
     assert rows[2][:4] == ("agent", "covariate", "form", "ticked on the form")
-    assert rows[2][6] == "closes premeet ← agent → file_quality → days"
+    assert rows[2][8] == (
+        "left out, premeet ← agent → file_quality → days would pass for an effect of premeet"
+    )
 
 
 def test_text_that_begins_like_a_formula_stays_text(

@@ -7,18 +7,29 @@ capitals, and nothing is said by colour alone.
 from collections.abc import Iterable, Sequence
 
 from rich.cells import cell_len
-from rich.console import Console, Group, RenderableType
+from rich.console import Console, Group, JustifyMethod, RenderableType
 from rich.padding import Padding
 from rich.table import Table
 from rich.text import Text
 
-from planner.report.view import Note, RouteRow, View
+from planner.report.rows import Note, RouteRow
+from planner.report.view import View
 
 __all__ = ["print_report", "report"]
 
 INDENT = (0, 0, 0, 2)
-MOST_COLUMNS = 22
+MOST_CELLS = 22
 """A name longer than this is folded."""
+LEGEND = "a → b: a acts on b. What stands in brackets cannot be measured."
+PARTS = {
+    "treatment": "treatment and outcome",
+    "outcome": "treatment and outcome",
+    "instrument": "instrument",
+    "mediator": "mediators (the mechanism)",
+    "covariate": "covariates (to adjust for)",
+    "component": "components (shared costs)",
+}
+"""The heading under which each part stands in the list of purchases."""
 
 
 def print_report(view: View, console: Console) -> None:
@@ -34,19 +45,17 @@ def report(view: View) -> Group:
     beyond = f" (the plan beyond the limits, by {view.shown_plan})" if view.shown_plan else ""
     sections: list[tuple[str, list[RenderableType]]] = [
         ("ANSWER", paragraphs(view.answer)),
-        (f"WHAT TO MEASURE{beyond}", [measurements(view), *paragraphs(view.legend)]),
+        (f"WHAT TO BUY{beyond}", [Text(LEGEND), purchases(view)] if view.bought else []),
         ("DO NOT ADJUST FOR", [named(view.never)] if view.never else []),
         ("WHAT IT LEANS ON", bullets(view.leans_on)),
         ("TAKE CARE", bullets(view.cautions)),
-        (f"THE BILL{beyond}", [bill(view)] if view.bill else []),
         ("WHAT ONE UNIT BEARS", [named(view.burdens)] if view.burdens else []),
+        (f"THE BILL{beyond}", [bill(view)] if view.bill else []),
         ("THE ROUTES SIDE BY SIDE", [side_by_side(view.routes)]),
         ("WHY EACH ROUTE IS OPEN OR NOT", [reasons(view.routes)]),
         ("MEASURABLE, BUT NOT NEEDED", [named(view.left_out)] if view.left_out else []),
         ("ALSO GOOD TO KNOW", bullets(view.notes)),
     ]
-    if not view.bought:
-        sections = [each for each in sections if not each[0].startswith("WHAT TO MEASURE")]
     parts: list[RenderableType] = [Text(view.title, style="bold"), Text(view.subject)]
     for heading, body in sections:
         if body:
@@ -84,27 +93,35 @@ def named(notes: Iterable[Note]) -> Table:
     return table
 
 
-def measurements(view: View) -> Group:
-    """Return the measurement list: a line of facts for each purchase, then how and why."""
-    heads = ("what", "part", "way", "each unit", "set-up")
-    facts = [(row.name, row.part, row.way, row.each, row.once) for row in view.bought]
-    widths = [
-        min(max(map(cell_len, column)), MOST_COLUMNS) for column in zip(heads, *facts, strict=True)
+def purchases(view: View) -> Group:
+    """Return what is bought: a line of figures for each, then how it is done and why; the sum."""
+    heads = ("", "way", "units", "each unit", "set-up", f"in all {view.currency}".strip())
+    figures = [
+        (f"  {row.name}", row.way, row.units, row.each, row.once, row.amount) for row in view.bought
     ]
-    parts: list[RenderableType] = [facts_line(heads, widths, "italic")]
-    for row, cells in zip(view.bought, facts, strict=True):
-        parts.append(facts_line(cells, widths, "bold"))
+    sums = [(note.name, "", "", "", "", note.text) for note in view.sums]
+    widths = [
+        min(max(map(cell_len, column)), MOST_CELLS)
+        for column in zip(heads, *figures, *sums, strict=True)
+    ]
+    parts: list[RenderableType] = [figures_line(heads, widths, "italic")]
+    part = ""
+    for row, cells in zip(view.bought, figures, strict=True):
+        if PARTS[row.part] != part:
+            part = PARTS[row.part]
+            parts.append(Text(part, style="italic"))
+        parts.append(figures_line(cells, widths, "bold"))
         about = ": ".join(filter(None, (row.how, row.why)))
-        parts.append(Padding(Text(about), INDENT))
-    return Group(*parts)
+        parts.append(Padding(Text(about), (0, 0, 0, 4)))
+    return Group(*parts, *(figures_line(cells, widths, "bold") for cells in sums))
 
 
-def facts_line(cells: Sequence[str], widths: Sequence[int], style: str) -> Table:
-    """Return one line of facts; prices stand to the right of their column."""
-    table = Table.grid(padding=(0, 2, 0, 0))
+def figures_line(cells: Sequence[str], widths: Sequence[int], style: str) -> Table:
+    """Return one line of figures; numbers stand to the right of their column."""
+    table = Table.grid(padding=(0, 1, 0, 0))
     for number, width in enumerate(widths):
-        right = number >= len(widths) - 2
-        table.add_column(width=width, overflow="fold", justify="right" if right else "left")
+        justify: JustifyMethod = "left" if number < 2 else "right"
+        table.add_column(width=width, overflow="fold", justify=justify)
     table.add_row(*(Text(cell, style=style) for cell in cells))
     return table
 

@@ -42,8 +42,10 @@ MEASURE_COLUMNS = (
     ("part", 12),
     ("way", 14),
     ("how", 44),
+    ("units", 10),
     ("each unit", 16),
     ("set-up", 12),
+    ("in all", 12),
     ("why", 60),
 )
 
@@ -70,7 +72,17 @@ def write_measurements(sheet: "Worksheet", view: View) -> None:
     write_text(sheet["A2"], view.answer[0])
     write_heading(sheet, 4, MEASURE_COLUMNS)
     for row, item in enumerate(view.bought, 5):
-        cells = (item.name, item.part, item.way, item.how, item.each, item.once, item.why)
+        cells = (
+            item.name,
+            item.part,
+            item.way,
+            item.how,
+            item.units,
+            item.each,
+            item.once,
+            item.amount,
+            item.why,
+        )
         for column, text in enumerate(cells, 1):
             write_text(sheet.cell(row, column), text)
     sheet.freeze_panes = "A5"

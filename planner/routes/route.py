@@ -22,7 +22,7 @@ class Words:
     title: str
     """The route's name in a sentence, after "by"."""
     analysis: str
-    """What is done; takes ``{instruments}``, ``{mediators}`` and ``{covariates}``."""
+    """What is done; takes ``{instruments}``, ``{mediators}`` and ``{covariates}`` too."""
     bare_analysis: str
     """The same where there are no covariates."""
     estimand: str

@@ -7,21 +7,20 @@ __all__ = ["WORDS"]
 WORDS = Words(
     title="conditioning on covariates",
     analysis="adjust for {covariates}",
-    bare_analysis="compare units as they are, with nothing to adjust for",
+    bare_analysis="compare units as they are, with no covariates",
     estimand="average effect",
     leans_on=(
-        "nothing unmeasured still drives both {treatment} and {outcome} once the covariates are"
-        " adjusted for",
-        "among units alike in the covariates, some have much and some little of {treatment}"
-        " (positivity)",
+        "no common cause of {treatment} and {outcome} is missing from the diagram",
+        "among units alike in the covariates, {treatment} still varies (statisticians call this"
+        " positivity)",
     ),
     sentences={
-        "back_doors_closed": "adjusting for {all} closes every path that would mix other causes"
-        " in.",
-        "back_doors_closed:none": "no path mixes other causes in; there is nothing to adjust for.",
-        "back_door_open": "the path {path} stays open whatever is measured.",
-        "back_door_open:some": "some path stays open whatever is measured; adjusting for everything"
-        " that can be leaves {path}, which is open because {all} is adjusted for, or what follows"
-        " from it.",
+        "closes": "left out, {path} would pass for an effect of {treatment}",
+        "back_doors_closed": "adjusting for {all} stops every path that could pass for an effect.",
+        "back_doors_closed:none": "no path could pass for an effect: nothing to adjust for.",
+        "back_door_open": "the path {path} passes for an effect, whatever is measured.",
+        "back_door_open:some": "some path passes for an effect, whatever is measured; if all that"
+        " can be is adjusted for, it is {path}, let through because {all} is adjusted for, or what"
+        " follows from it.",
     },
 )

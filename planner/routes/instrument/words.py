@@ -6,25 +6,33 @@ __all__ = ["WORDS"]
 
 WORDS = Words(
     title="an instrument",
-    analysis="use {instruments} as the instrument, adjusting for {covariates}",
-    bare_analysis="use {instruments} as the instrument, with nothing to adjust for",
+    analysis="use {instruments} as the instrument, which moves {treatment} and reaches {outcome} in"
+    " no other way, adjusting for {covariates}",
+    bare_analysis="use {instruments} as the instrument, which moves {treatment} and reaches"
+    " {outcome} in no other way",
     estimand="average effect if it is the same for all; else the effect in compliers",
     leans_on=(
-        "the instrument reaches {outcome} through {treatment} only (exclusion)",
-        "the effect is the same for every unit; or the instrument moves nobody's {treatment} the"
-        " wrong way, and then the effect is that of the units it moves (compliers)",
-        "the instrument moves {treatment} strongly (first stage)",
+        "the instrument reaches {outcome} by way of {treatment} only (statisticians call this"
+        " exclusion)",
+        "either the effect is the same for every unit, or the instrument pushes nobody's"
+        " {treatment} the other way; in the second case the result holds only for the units that"
+        " it moves (compliers)",
+        "the instrument moves {treatment} strongly (a strong first stage)",
     ),
     sentences={
-        "instrument_found": "{all} moves the treatment, {path}, and no other open path leads from"
-        " it to the outcome.",
+        "closes": "left out, {path} would pass for the instrument's work",
+        "keeps_link": "left out, the instrument would not be linked to {treatment}, {path}",
+        "moves": "moves {treatment}, {path}",
+        "cuts_link": "adjusting for it would undo the instrument's work, {path}",
+        "instrument_found": "{all} moves {treatment}, {path}, and no path leads from it past"
+        " {treatment} to {outcome}.",
         "no_instrument": "no variable can be the instrument; {who} comes closest.",
-        "no_candidate": "nothing but treatment and outcome can be measured.",
-        "comes_after": "{who} follows from the treatment, {path}.",
-        "reaches_outcome": "{who} reaches the outcome past the treatment, {path}, and nothing that"
-        " can be measured closes that path.",
-        "no_link": "{who} has no link to the treatment.",
-        "link_cut": "{who} is linked to the treatment, {path}, but what closes its paths to the"
-        " outcome cuts that link too.",
+        "no_candidate": "nothing but {treatment} and {outcome} can be measured.",
+        "comes_after": "{who} is a result of {treatment}, {path}.",
+        "reaches_outcome": "{who} reaches {outcome} past {treatment}, {path}, and nothing that can"
+        " be measured stops it.",
+        "no_link": "{who} has no link to {treatment}.",
+        "link_cut": "{who} is linked to {treatment}, {path}, but what stops its other paths to"
+        " {outcome} cuts that link too.",
     },
 )
