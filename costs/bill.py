@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 from math import ceil, prod
 
-from costs.prices import PriceList, Purchase, Terms, WayName
+from costs.prices import Name, PriceList, Purchase, Terms, WayName, shown_name
 
 __all__ = [
     "Bill",
@@ -94,8 +94,8 @@ class Bill:
         return sum((line.setup for line in self.lines if line.kind in DIRECT), Fraction(0))
 
 
-def needed_by(names: Iterable[str], prices: PriceList) -> tuple[str, ...]:
-    """Return the named components and all that they need, in the order of the price list."""
+def needed_by(names: Iterable[str], prices: PriceList) -> frozenset[str]:
+    """Return the named components and all that they need."""
     found: set[str] = set()
     stack = list(names)
     while stack:
@@ -103,14 +103,18 @@ def needed_by(names: Iterable[str], prices: PriceList) -> tuple[str, ...]:
         if name not in found:
             found.add(name)
             stack.extend(prices.components[name].needs)
-    return tuple(name for name in prices.components if name in found)
+    return frozenset(found)
 
 
 def bought(ways: Iterable[WayName], prices: PriceList) -> tuple[str, ...]:
-    """Return the components that come with the ways: what they need, and what is always bought."""
+    """Return the components that come with the ways: what they need, and what is always bought.
+
+    In the order of the price list.
+    """
     always = [name for name, component in prices.components.items() if component.always]
     wanted = [name for way in ways for name in prices.purchase(way).needs]
-    return needed_by(always + wanted, prices)
+    needed = needed_by(always + wanted, prices)
+    return tuple(name for name in prices.components if name in needed)
 
 
 def reach(purchase: Purchase, prices: PriceList) -> Fraction:
@@ -157,7 +161,7 @@ def bill_for(ways: Iterable[WayName], prices: PriceList, terms: Terms) -> Bill:
     """Return the bill for measuring in these ways, with every component that they need."""
     ways = tuple(ways)
     components = bought(ways, prices)
-    names: tuple[str | WayName, ...] = (*ways, *components)
+    names: tuple[Name, ...] = (*ways, *components)
     purchases = [prices.purchase(name) for name in names]
     yields = [purchase.yields for purchase in purchases]
     started = started_units(yields, terms)
@@ -185,10 +189,10 @@ def _batches(purchase: Purchase, count: int) -> Fraction:
     return purchase.batch.price * ceil(Fraction(count, purchase.batch.holds))
 
 
-def _line(name: str | WayName, purchase: Purchase, count: int, terms: Terms) -> Line:
+def _line(name: Name, purchase: Purchase, count: int, terms: Terms) -> Line:
     return Line(
         kind="component" if isinstance(name, str) else "way",
-        name=name if isinstance(name, str) else ".".join(name),
+        name=shown_name(name),
         units=count,
         setup=purchase.setup,
         per_unit=purchase.per_unit * count,

@@ -1,9 +1,16 @@
 """Things that come before each other in a circle."""
 
-from collections.abc import Collection, Mapping
+from collections.abc import Collection, Mapping, Sequence
 from graphlib import CycleError, TopologicalSorter
 
-__all__ = ["circles"]
+from costs.located import shortened
+
+__all__ = ["circles", "spelt_out"]
+
+MOST_CIRCLES = 20
+"""Looking for one more takes as long as for the first; who has mended twenty can look again."""
+MOST_SHOWN = 12
+"""Members of one circle that are spelt out."""
 
 
 def circles(before: Mapping[str, Collection[str]]) -> list[list[str]]:
@@ -19,9 +26,9 @@ def circles(before: Mapping[str, Collection[str]]) -> list[list[str]]:
     >>> circles({"a": ["b"], "b": ["c"], "c": ["b"]})
     [['b', 'c', 'b']]
     """
-    found = []
+    found: list[list[str]] = []
     left = {name: list(earlier) for name, earlier in before.items()}
-    while True:
+    while len(found) < MOST_CIRCLES:
         try:
             TopologicalSorter(left).prepare()
         except CycleError as error:
@@ -30,10 +37,26 @@ def circles(before: Mapping[str, Collection[str]]) -> list[list[str]]:
             start = circle.index(min(circle))
             circle = circle[start:-1] + circle[: start + 1]
             found.append(circle)
+            members = set(circle)
             left = {
-                name: [each for each in earlier if each not in circle]
+                name: [each for each in earlier if each not in members]
                 for name, earlier in left.items()
-                if name not in circle
+                if name not in members
             }
         else:
-            return found
+            break
+    return found
+
+
+def spelt_out(circle: Sequence[str], joint: str) -> str:
+    """Return a circle as text; of a long one its beginning and its end.
+
+    Examples
+    --------
+    >>> spelt_out(["a", "b", "a"], " → ")
+    'a → b → a'
+    """
+    names = [shortened(name) for name in circle]
+    if len(names) > MOST_SHOWN:
+        names = [*names[: MOST_SHOWN - 2], f"… {len(names) - MOST_SHOWN + 1} more …", names[-1]]
+    return joint.join(names)

@@ -70,6 +70,10 @@ class Faults:
         """Keep one fault."""
         self._found.append(fault)
 
+    def spoil(self, file: str) -> bool:
+        """Say whether so much of a file is at fault that what it lists is not all there."""
+        return any(fault.file == file and fault.key in {"file", "header"} for fault in self._found)
+
     def __bool__(self) -> bool:
         return bool(self._found)
 

@@ -13,8 +13,12 @@ __all__ = ["NamedFile", "read_file", "yaml_tree"]
 
 LARGEST_FILE = 10_000_000
 """Bytes. A study of 10,000 variables takes about 2 MB."""
-MOST_VALUES = 1_000_000
-"""Values in a file once its aliases are written out; a file of the largest size holds fewer."""
+MOST_VALUES = 300_000
+"""Values in a file once its aliases are written out: 20,000 variables with fifteen each."""
+MOST_REPEATED = 3
+"""A long file may become so many times as long by its aliases."""
+LONG_FILE = 50_000
+"""Values from which on a file is long."""
 START = Spot(1, 1)
 PLAIN_TAGS = frozenset(["!"]) | frozenset(
     f"tag:yaml.org,2002:{kind}"
@@ -46,10 +50,13 @@ def read_file(path: Path, faults: Faults) -> NamedFile | None:
             wrong = "there is no such file."
         elif not path.is_file():
             wrong = "is a folder, not a file." if path.is_dir() else "is not an ordinary file."
-        elif path.stat().st_size > LARGEST_FILE:
-            wrong = f"is larger than {LARGEST_FILE // 10**6} MB."
         else:
-            return NamedFile(path, path.read_bytes())
+            # Not by its size, which some files do not tell.
+            with path.open("rb") as file:
+                content = file.read(LARGEST_FILE + 1)
+            if len(content) <= LARGEST_FILE:
+                return NamedFile(path, content)
+            wrong = f"is larger than {LARGEST_FILE // 10**6} MB."
     except (OSError, ValueError) as error:
         wrong = f"cannot be read: {getattr(error, 'strerror', None) or error}."
     faults.add(fault_of(path, START, wrong, "Name a readable file of a study or a price list."))
@@ -93,9 +100,9 @@ def fault_of_events(path: Path, text: str, builder: "TreeBuilder") -> Fault | No
         return fault_of(path, START, wrong, "No key needs more than eight levels.")
     if builder.root is None:
         return fault_of(path, START, "is empty.", "'measurewise new' writes a study to fill in.")
-    if builder.values > MOST_VALUES:
-        wrong = f"stands for more than {MOST_VALUES:,} values once its aliases are written out."
-        return fault_of(path, START, wrong, "Write the entries without aliases.")
+    if builder.values > builder.most_values:
+        wrong = f"stands for {builder.values:,} values; at most {builder.most_values:,} are read."
+        return fault_of(path, START, wrong, "Write the entries without aliases, or fewer of them.")
     return None
 
 
@@ -134,18 +141,24 @@ class TreeBuilder:
         self._open: list[Unfinished] = []
         self._anchors: dict[str, tuple[Node, int]] = {}
         self.documents = 0
+        self._written = 0
         self.root: Node | None = None
         self.values = 0
+
+    @property
+    def most_values(self) -> int:
+        """The most values that the file may stand for, by how many it writes out itself."""
+        return min(MOST_VALUES, max(LONG_FILE, MOST_REPEATED * self._written))
 
     def take(self, event: yaml.Event) -> None:
         """Take one event."""
         match event:
             case yaml.ScalarEvent():
-                self._look_at_tag(event)
+                self._begin(event)
                 scalar = Scalar(spot_of(event), event.value, not event.style)
                 self._add(scalar, 1, event.anchor)
             case yaml.CollectionStartEvent():
-                self._look_at_tag(event)
+                self._begin(event)
                 self._open.append(Unfinished(event))
             case yaml.CollectionEndEvent():
                 done = self._open.pop()
@@ -178,7 +191,9 @@ class TreeBuilder:
         self._say(event, wrong, "Write the value itself.")
         self._add(Scalar(spot_of(event), ""), 1, None)
 
-    def _look_at_tag(self, event: yaml.ScalarEvent | yaml.CollectionStartEvent) -> None:
+    def _begin(self, event: yaml.ScalarEvent | yaml.CollectionStartEvent) -> None:
+        """Count a value, and refuse a tag that asks for more than data."""
+        self._written += 1
         tag = event.tag
         if tag is not None and tag not in PLAIN_TAGS:
             shown = shortened(tag.replace("tag:yaml.org,2002:", "!!"))

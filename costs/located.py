@@ -34,8 +34,17 @@ LARGEST_EXPONENT = 14
 MOST_PLACES = 15
 """No number is read with more decimals than this, whatever it counts."""
 
+LONGEST_NUMBER = 40
+"""Characters; a longer number is a slip, or meant to do harm."""
+LONGEST_HINT = 100
+"""Characters; for a longer name the nearest known one is not looked for."""
+
 NUMBER = re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d{1,4})?", re.ASCII)
 EMPTY = frozenset({"", "~", "null", "Null", "NULL"})
+INVISIBLE = frozenset({"Cf", "Zs"})
+"""Kinds of characters that show nothing by themselves."""
+TURNING = frozenset("\u202a\u202b\u202c\u202d\u202e\u2066\u2067\u2068\u2069")
+"""Characters that turn the direction of the text after them, and so can forge what is shown."""
 FLAGS = {"yes": True, "true": True, "no": False, "false": False}
 
 
@@ -81,7 +90,7 @@ class Source:
 
     def nearest(self, name: str, known: Collection[str]) -> str:
         """Return the known name that ``name`` may have been meant for, as a hint."""
-        if not self.faults.allow_comparisons(len(known)):
+        if len(name) > LONGEST_HINT or not self.faults.allow_comparisons(len(known)):
             return "Correct the name, or add what it stands for."
         return nearest(name, known)
 
@@ -164,8 +173,6 @@ class Located:
                     "is reserved: its meaning is fixed, but it cannot be used yet.",
                     "Leave it out for now.",
                 )
-            elif name == "<<":
-                key.fault("is a merge key, which is not read.", "Write the entries out.")
             else:
                 hint = meant.get(name) or self.source.nearest(name, known)
                 key.fault("is not a known key.", hint)
@@ -182,6 +189,10 @@ class Located:
             return {}
         found: dict[str, tuple[Located, Located]] = {}
         for key_node, value in self.node.pairs:
+            if isinstance(key_node, Scalar) and key_node.plain and key_node.text == "<<":
+                place = Located(key_node, self.key, self.source)
+                place.fault("holds a merge key, which is not read.", "Write the entries out.")
+                continue
             name = Located(key_node, self.key, self.source).name()
             if name is None:
                 continue
@@ -244,10 +255,10 @@ class Located:
             )
             return None
         name = self.node.text.strip()
-        if not name:
+        if not name or (not name.isascii() and all(category(c) in INVISIBLE for c in name)):
             self.fault("is empty, where a name is wanted.", "Write a name.")
             return None
-        if not name.isprintable() and any(is_control(char) for char in name):
+        if not name.isprintable() and any(is_control(c) or c in TURNING for c in name):
             self.fault(
                 f"is {self.shown}, a name with a character that cannot be printed.",
                 "Leave line breaks and control characters out of names.",
@@ -265,7 +276,16 @@ class Located:
                 "Write the text on one line, in quotes if it holds a colon.",
             )
             return None
-        return self.node.text
+        text = self.node.text
+        if not text.isprintable() and any(is_control(c) and c not in "\n\r\t" for c in text):
+            self.fault(f"is {self.shown}, with a control character.", "Take the character out.")
+            return None
+        return text
+
+    def line(self) -> str | None:
+        """Return free text on one line; None where nothing is written."""
+        text = self.text()
+        return None if text is None else " ".join(text.split())
 
     def flag(self) -> bool | None:
         """Return a yes or a no."""
@@ -310,9 +330,7 @@ class Located:
                 f"Write a number below 10^{LARGEST_EXPONENT + 1}.",
             )
             return None
-        exponent = written.normalize().as_tuple().exponent
-        assert isinstance(exponent, int)  # the pattern admits no infinity and no nan
-        if -exponent > places:
+        if decimals_of(written) > places:
             self.fault(
                 f"is {self.shown}, with more than {places} decimals.",
                 f"Round it to {places} decimals.",
@@ -358,6 +376,9 @@ class Located:
                 f"is the formula {self.shown}, and none is computed.", "Write the number itself."
             )
             return None
+        if len(text) > LONGEST_NUMBER:
+            self.fault(f"is {self.shown}, which is too long for a number.", "Round it.")
+            return None
         if not NUMBER.fullmatch(text):
             wrong = (
                 "is empty, where a number is wanted."
@@ -385,6 +406,23 @@ def nearest(name: str, known: Collection[str]) -> str:
     if near:
         return f"Did you mean '{shortened(folded[near[0]])}'?"
     return f"Known here: {listed(known)}." if known else "Nothing is known here yet."
+
+
+def decimals_of(number: Decimal) -> int:
+    """Return how many decimals a number has, zeros at its end not counted.
+
+    Examples
+    --------
+    >>> decimals_of(Decimal("12.50")), decimals_of(Decimal("1e3"))
+    (1, 0)
+    """
+    if not number:
+        return 0
+    # Not by ``normalize``, which rounds to 28 digits.
+    _, digits, exponent = number.as_tuple()
+    assert isinstance(exponent, int), "the pattern admits no infinity and no nan"
+    zeros = next(count for count, digit in enumerate(reversed(digits)) if digit)
+    return max(0, -(exponent + zeros))
 
 
 def is_control(char: str) -> bool:

@@ -5,18 +5,23 @@ from dataclasses import dataclass, field
 from fractions import Fraction
 
 __all__ = [
+    "MOST_RECORDS",
     "STANDARD",
     "TEXTS",
     "Batch",
     "Burden",
     "Component",
+    "Name",
     "PriceList",
     "Purchase",
     "Terms",
     "Way",
     "WayName",
+    "shown_name",
 ]
 
+MOST_RECORDS = 10**9
+"""More complete records are out of reach."""
 STANDARD = "standard"
 """The name of a variable's only way, where it has none of its own."""
 TEXTS = (
@@ -33,6 +38,19 @@ TEXTS = (
 
 WayName = tuple[str, str]
 """A variable and the name of one of its ways."""
+Name = str | WayName
+"""The name of a purchase: a component, or a variable and one of its ways."""
+
+
+def shown_name(name: Name) -> str:
+    """Return the name of a purchase as it stands in a bill.
+
+    Examples
+    --------
+    >>> shown_name("extract"), shown_name(("days", "system"))
+    ('extract', 'days.system')
+    """
+    return name if isinstance(name, str) else ".".join(name)
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -117,7 +135,7 @@ class PriceList:
     """By variable, then by the name of the way."""
     components: Mapping[str, Component]
 
-    def purchase(self, name: "str | WayName") -> Purchase:
+    def purchase(self, name: Name) -> Purchase:
         """Return a component by its name, a way by its variable and name."""
         if isinstance(name, str):
             return self.components[name]

@@ -12,10 +12,10 @@ from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
-from costs.circles import circles
+from costs.circles import circles, spelt_out
 from costs.faults import Faults
 from costs.files import START, NamedFile, fault_of, read_file, yaml_tree
-from costs.located import Located
+from costs.located import Located, shortened
 from costs.prices import STANDARD, TEXTS, Batch, Burden, Component, PriceList, Way
 from costs.tables import MEANT, Row, csv_rows, xlsx_rows
 
@@ -37,6 +37,8 @@ LATER_WAY_KEYS = ("on", "tiers", "weeks")
 LATER_COMPONENT_KEYS = (*LATER_WAY_KEYS, "cuts")
 PRICE_PLACES = 4
 TAKES_PLACES = 2
+MOST_TAKEN = 10**9
+"""No unit bears more of a burden than this."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,8 +60,10 @@ class PriceFile:
 
     file: NamedFile
     listed: tuple[Listed, ...]
-    currency: Located | None
-    valid_until: date | None
+    currency: Located | None = None
+    valid_until: date | None = None
+    unread: tuple[str, ...] = ()
+    """Sheets of a workbook that hold something, but no price table."""
 
 
 def read_price_file(path: Path, faults: Faults) -> PriceFile | None:
@@ -67,8 +71,8 @@ def read_price_file(path: Path, faults: Faults) -> PriceFile | None:
     readers: dict[str, Callable[[NamedFile, Faults], PriceFile]] = {
         ".yaml": yaml_prices,
         ".yml": yaml_prices,
-        ".csv": lambda file, found: table_prices(file, csv_rows(file, found)),
-        ".xlsx": lambda file, found: table_prices(file, xlsx_rows(file, found)),
+        ".csv": csv_prices,
+        ".xlsx": xlsx_prices,
     }
     reader = readers.get(path.suffix.lower())
     if reader is None:
@@ -91,9 +95,8 @@ def yaml_prices(file: NamedFile, faults: Faults) -> PriceFile:
     ]
     listed += [listed_component(name, place) for name, place in named_in(found, "components")]
     until = found.get("valid_until")
-    return PriceFile(
-        file, tuple(listed), found.get("currency"), read_date(until) if until else None
-    )
+    valid = read_date(until) if until else None
+    return PriceFile(file, tuple(listed), found.get("currency"), valid)
 
 
 def named_in(found: Mapping[str, Located], key: str) -> Iterable[tuple[str, Located]]:
@@ -111,10 +114,17 @@ def read_date(place: Located) -> date | None:
         return None
 
 
-def table_prices(file: NamedFile, rows: Iterable[Row]) -> PriceFile:
+def csv_prices(file: NamedFile, faults: Faults) -> PriceFile:
     """Read rows that each name a variable (and a way) or a component."""
+    rows = csv_rows(file, faults)
+    return PriceFile(file, tuple(each for row in rows for each in listed_in_row(row)))
+
+
+def xlsx_prices(file: NamedFile, faults: Faults) -> PriceFile:
+    """Read the same rows from the sheets of a workbook."""
+    rows, unread = xlsx_rows(file, faults)
     listed = tuple(each for row in rows for each in listed_in_row(row))
-    return PriceFile(file, listed, None, None)
+    return PriceFile(file, listed, unread=unread)
 
 
 def listed_in_row(row: Row) -> Iterator[Listed]:
@@ -175,7 +185,7 @@ def purchase_fields(
         "setup": read_price(found["setup"]) if "setup" in found else None,
         "per_unit": read_price(found["per_unit"]) if "per_unit" in found else None,
         "batch": read_batch(found["batch"]) if "batch" in found else None,
-        "label": found["label"].text() if "label" in found else None,
+        "label": found["label"].line() if "label" in found else None,
         "needs": tuple(needs),
         "takes": read_amounts(takes),
         "texts": read_texts(found),
@@ -187,7 +197,10 @@ def purchase_fields(
 
 def read_amounts(takes: Mapping[str, Located]) -> dict[str, Fraction]:
     """Return how much of each burden one unit bears."""
-    amounts = {name: place.number(least=0, places=TAKES_PLACES) for name, place in takes.items()}
+    amounts = {
+        name: place.number(least=0, most=MOST_TAKEN, places=TAKES_PLACES)
+        for name, place in takes.items()
+    }
     return {name: amount for name, amount in amounts.items() if amount is not None}
 
 
@@ -241,8 +254,8 @@ def read_burdens(place: Located) -> dict[str, Burden]:
     for name, entry in place.named().items():
         found = entry.entries(("label", "limit", "price", "care"))
         read: dict[str, Any] = {
-            "label": found["label"].text() if "label" in found else None,
-            "limit": found["limit"].number(least=0, places=TAKES_PLACES)
+            "label": found["label"].line() if "label" in found else None,
+            "limit": found["limit"].number(least=0, most=MOST_TAKEN, places=TAKES_PLACES)
             if "limit" in found
             else None,
             "price": read_price(found["price"]) if "price" in found else None,
@@ -255,7 +268,9 @@ def read_burdens(place: Located) -> dict[str, Burden]:
 # ------------------------------------------------------------------------------- all lists together
 
 
-def combined(every: Iterable[Listed], burdens: Mapping[str, Burden]) -> PriceList:
+def combined(
+    every: Iterable[Listed], burdens: Mapping[str, Burden], *, complete: bool = True
+) -> PriceList:
     """Return one price list; what stands twice, is unknown or needs itself is a fault.
 
     Parameters
@@ -264,6 +279,8 @@ def combined(every: Iterable[Listed], burdens: Mapping[str, Burden]) -> PriceLis
         From all files, in the order in which they were read.
     burdens
         The burdens that the study declares.
+    complete
+        Whether every file could be read; if not, a component may be missing for that reason.
     """
     first: dict[tuple[str, str], Listed] = {}
     for each in every:
@@ -277,7 +294,8 @@ def combined(every: Iterable[Listed], burdens: Mapping[str, Burden]) -> PriceLis
             )
     components = {each.name: each for each in first.values() if not each.variable}
     for each in first.values():
-        look_up(each.needs, components, "component")
+        if complete:
+            look_up(each.needs, components, "component")
         look_up(each.takes, burdens, "burden")
     refuse_circles(components)
     return PriceList(
@@ -295,7 +313,8 @@ def look_up(names: Mapping[str, Located], known: Mapping[str, object], kind: str
     for name, place in names.items():
         if name not in known:
             place.fault(
-                f"names the {kind} '{name}', which is not there.", place.source.nearest(name, known)
+                f"names the {kind} '{shortened(name)}', which is not there.",
+                place.source.nearest(name, known),
             )
 
 
@@ -303,9 +322,8 @@ def refuse_circles(components: Mapping[str, Listed]) -> None:
     """Say which components need each other in a circle, if any."""
     for circle in circles({name: tuple(each.needs) for name, each in components.items()}):
         place = components[circle[0]].place
-        place.fault(
-            f"needs itself: {' needs '.join(reversed(circle))}.", "Take one of these needs out."
-        )
+        shown = spelt_out(list(reversed(circle)), " needs ")
+        place.fault(f"needs itself: {shown}.", "Take one of these needs out.")
 
 
 def ways_by_variable(every: Iterable[Listed]) -> dict[str, dict[str, Way]]:

@@ -1,21 +1,18 @@
 """Price lists as tables: CSV with either separator, and XLSX.
 
-A row becomes the tree that YAML gives.
-
-A formula is read as the text it is and never computed; a workbook is read as a stream, and one that
-would unpack to far more than a price list holds is refused.
+A row becomes the tree that YAML gives, so that one reader knows what a way is.
 """
 
 import csv
 import io
-import zipfile
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
-from costs.faults import Fault, Faults, Spot
-from costs.files import NamedFile, text_of
+from costs.faults import Faults, Spot
+from costs.files import NamedFile, fault_of, text_of
 from costs.located import Entries, Items, Located, Node, Scalar, Source
+from costs.workbooks import MOST_ROWS, Sheet, workbook_sheets
 
 __all__ = ["COLUMNS", "Row", "csv_rows", "xlsx_rows"]
 
@@ -40,10 +37,6 @@ PARTS = {"batch_holds": "holds", "batch_price": "price"}
 """Columns that together make the entry ``batch``."""
 KEPT = frozenset(COLUMNS) - frozenset(PARTS) - {"variable", "way", "component", "needs", "takes"}
 """Columns that are an entry of the same name."""
-LARGEST_UNPACKED = 200_000_000
-"""Bytes that a workbook may unpack to."""
-MOST_COLUMNS = 100
-"""Columns read of a workbook; a price list has fifteen."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,7 +55,7 @@ class Row:
     def entry(self, key: str) -> Located:
         """Return what the row says of a way or a component, as the entry that YAML would give."""
         pairs: list[tuple[Node, Node]] = [
-            (Scalar(self.spot, column), cell)
+            (Scalar(cell.spot, column), cell)
             for column, cell in self.cells.items()
             if column in KEPT
         ]
@@ -96,7 +89,8 @@ def csv_rows(file: NamedFile, faults: Faults) -> Iterator[Row]:
     text = text_of(file, faults)
     if text is None:
         return
-    semicolons = ";" in text.partition("\n")[0]
+    header = next((line for line in text.splitlines() if line.strip()), "")
+    semicolons = ";" in header
     source = Source(str(file.path), faults, decimal_comma=semicolons)
     yield from rows_below_header(csv_cells(text, ";" if semicolons else ",", source), source)
 
@@ -106,111 +100,48 @@ def csv_cells(text: str, delimiter: str, source: Source) -> Iterator[list[Scalar
     reader = csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
     begins = 1
     try:
-        for cells in reader:
+        for number, cells in enumerate(reader):
+            if number > MOST_ROWS:
+                raise csv.Error(f"more than {MOST_ROWS:,} rows")  # noqa: TRY301 - told as the others
             yield [
                 Scalar(Spot(begins, column), cell.strip()) for column, cell in enumerate(cells, 1)
             ]
             begins = reader.line_num + 1
     except csv.Error as error:
-        spot = Spot(begins)
-        wrong = f"is no CSV here: {error}."
-        source.faults.add(
-            Fault(
-                file=source.file,
-                spot=spot,
-                key="file",
-                wrong=wrong,
-                mend="Look for a quote that is not closed.",
-            )
-        )
+        mend = "Look for a quote that is not closed, or split the list into several files."
+        wrong = f"is no price list in CSV here: {error}."
+        source.faults.add(fault_of(Path(source.file), Spot(begins), wrong, mend))
 
 
-def xlsx_rows(file: NamedFile, faults: Faults) -> Iterator[Row]:
-    """Return the rows of every sheet whose first row is a header of a price table."""
+def xlsx_rows(file: NamedFile, faults: Faults) -> tuple[list[Row], tuple[str, ...]]:
+    """Return the rows of every price table, and the titles of sheets that hold something else."""
     source = Source(str(file.path), faults)
-    sheets = workbook_cells(file.path, file.content, faults)
-    tables = [
-        cells
-        for cells in sheets
-        if cells and {"variable", "component"} & {cell.text.casefold() for cell in cells[0]}
-    ]
+    sheets = [sheet for sheet in workbook_sheets(file, faults) if any(sheet.rows)]
+    tables = [sheet for sheet in sheets if begins_with_columns(sheet)]
     if sheets and not tables:
         first = Located(Scalar(Spot(1, 1, "A1"), ""), "header", source)
-        first.fault(
-            "no sheet begins with a row of column names.", f"Columns: {', '.join(COLUMNS)}."
-        )
-    for cells in tables:
-        yield from rows_below_header(iter(cells), source)
+        columns = ", ".join(COLUMNS)
+        first.fault("no sheet begins with a row of column names.", f"Columns: {columns}.")
+    rows = [row for sheet in tables for row in rows_below_header(iter(sheet.rows), source)]
+    return rows, tuple(sheet.title for sheet in sheets if sheet not in tables)
 
 
-def workbook_cells(path: Path, content: bytes, faults: Faults) -> list[list[list[Scalar]]]:
-    """Return the cells of each sheet, row by row; nothing, with a fault, if it is no workbook."""
-    # Imported here: it takes a quarter of a second, and most studies have no workbook.
-    from openpyxl import load_workbook  # noqa: PLC0415
-    from openpyxl.utils import get_column_letter  # noqa: PLC0415
-
-    def scalars(sheet: object, prefix: str) -> Iterator[list[Scalar]]:
-        sheet.reset_dimensions()  # type: ignore[attr-defined]  # what a workbook says of its own size may be wrong
-        for row, values in enumerate(sheet.iter_rows(values_only=True, max_col=MOST_COLUMNS), 1):  # type: ignore[attr-defined]
-            yield [
-                Scalar(
-                    Spot(row, column, f"{prefix}{get_column_letter(column)}{row}"), cell_text(value)
-                )
-                for column, value in enumerate(values, 1)
-            ]
-
-    try:
-        refuse_endless(content)
-        book = load_workbook(io.BytesIO(content), read_only=True, data_only=False)
-        many = len(book.worksheets) > 1
-        return [
-            list(scalars(sheet, f"{sheet.title}!" if many else "")) for sheet in book.worksheets
-        ]
-    except Exception as error:  # noqa: BLE001 - a damaged workbook can fail anywhere inside the library
-        wrong = f"is no workbook that can be read: {error or type(error).__name__}."
-        faults.add(
-            Fault(
-                file=str(path),
-                spot=Spot(1, 1, "A1"),
-                key="file",
-                wrong=wrong,
-                mend="Save it as XLSX again.",
-            )
-        )
-        return []
+def begins_with_columns(sheet: Sheet) -> bool:
+    """Say whether the first row that holds something names columns of a price table."""
+    first = next(row for row in sheet.rows if row)
+    return bool({"variable", "component"} & {cell.text.casefold() for cell in first})
 
 
-def refuse_endless(content: bytes) -> None:
-    """Refuse an archive that would unpack to far more than a price list holds."""
-    with zipfile.ZipFile(io.BytesIO(content)) as archive:
-        if sum(part.file_size for part in archive.infolist()) > LARGEST_UNPACKED:
-            raise ValueError(f"it unpacks to more than {LARGEST_UNPACKED // 10**6} MB")
-
-
-def cell_text(value: object) -> str:
-    """Return what a cell holds as the text that a person would have written."""
-    match value:
-        case None:
-            return ""
-        case bool():
-            return "yes" if value else "no"
-        case float() if value.is_integer():
-            return str(int(value))
-        case _:
-            return str(value).strip()
-
-
-def rows_below_header(lines: Iterator[list[Scalar]], source: Source) -> Iterator[Row]:
-    """Return the rows below the first, which names the columns."""
-    header = next(lines, None)
-    if header is None or not any(cell.text for cell in header):
+def rows_below_header(lines: Iterator[Sequence[Scalar]], source: Source) -> Iterator[Row]:
+    """Return the rows below the first that holds something, which names the columns."""
+    full = (cells for cells in lines if any(cell.text for cell in cells))
+    header = next(full, None)
+    if header is None:
         spot = Located(Scalar(Spot(1, 1), ""), "file", source)
         spot.fault("is empty.", f"Begin with a row of column names: {', '.join(COLUMNS)}.")
         return
     columns = columns_of(header, source)
-    for cells in lines:
-        if not any(cell.text for cell in cells):
-            continue
+    for cells in full:
         outside(cells, columns, source)
         named = {
             name: cell for name, cell in zip(columns, cells, strict=False) if name and cell.text
@@ -232,7 +163,7 @@ def columns_of(header: Iterable[Scalar], source: Source) -> list[str]:
     return names
 
 
-def outside(cells: list[Scalar], columns: list[str], source: Source) -> None:
+def outside(cells: Sequence[Scalar], columns: list[str], source: Source) -> None:
     """Say which cells stand in no column."""
     for cell in cells[len(columns) :]:
         if cell.text:

@@ -4,36 +4,30 @@ One in the tally is the largest unit of money that divides every price, so that 
 Prices have at most four decimals and burdens two: the unit is never below a millionth.
 """
 
+from bisect import bisect_left
 from collections.abc import Iterator
 from dataclasses import dataclass
 from fractions import Fraction
 
 from costs.bill import bought, count_of, line_amount, reach, running_price, started_units
 from costs.money import integer_scale
-from costs.prices import PriceList, Purchase, Terms, WayName
+from costs.prices import Name, PriceList, Purchase, Terms
 
-__all__ = ["LARGEST_SUM", "MOST_STARTED", "Name", "Overflow", "Tally"]
+__all__ = ["LARGEST_SUM", "MOST_STARTED", "Overflow", "Tally"]
 
 LARGEST_SUM = 2**60
 """All lines together stay below this many units of the tally."""
 MOST_STARTED = 10**10
 """No plan starts more units than this."""
 
-Name = str | WayName
-"""A component, or a variable and one of its ways."""
-
 
 class Overflow(Exception):  # noqa: N818 - it names what happened
-    """The amounts are too large to be added up in whole numbers."""
+    """A plan is too large to be added up in whole numbers; the message says in what respect."""
 
-    def __init__(self, name: Name, unit: Fraction) -> None:
-        self.name = name if isinstance(name, str) else ".".join(name)
-        """The purchase of the largest amount."""
-        self.unit = unit
-        super().__init__(
-            f"all amounts together reach 2^60 times {float(unit):g}, the largest amount of money"
-            " that divides them all."
-        )
+    def __init__(self, wrong: str, name: Name | None = None) -> None:
+        self.name = name
+        """The purchase of the largest amount; None where the units started are too many."""
+        super().__init__(wrong)
 
 
 @dataclass(frozen=True, slots=True)
@@ -83,12 +77,31 @@ class Tally:
         Raises
         ------
         Overflow
-            If all together come to more than the solver can count.
+            If the units are too many, or all together come to more than the solver can count.
         """
+        if started > MOST_STARTED:
+            raise Overflow(f"leads to more than {MOST_STARTED:,} units that must be started.")
         lines = {name: self.line(name, started) for name in self.names}
-        if sum(lines.values()) >= LARGEST_SUM or started > MOST_STARTED:
-            raise Overflow(max(lines, key=lambda name: lines[name], default=""), self.unit)
+        if sum(lines.values()) >= LARGEST_SUM:
+            raise Overflow(
+                "is too dear to be added up exactly: all amounts together reach 2^60 times"
+                f" {float(self.unit):g}, the largest amount of money that divides them all.",
+                max(lines, key=lambda name: lines[name]),
+            )
         return lines
+
+    def is_countable(self, started: int) -> bool:
+        """Say whether a plan that starts so many units can be added up."""
+        try:
+            self.lines(started)
+        except Overflow:
+            return False
+        return True
+
+    def most_countable(self, some: int, too_many: int) -> int:
+        """Return the most units for which plans can be added up, between two numbers."""
+        numbers = range(some, too_many)
+        return some + bisect_left(numbers, 1, key=lambda n: not self.is_countable(n)) - 1
 
 
 def _parts(purchase: Purchase, terms: Terms) -> Iterator[Fraction]:

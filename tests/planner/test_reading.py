@@ -126,8 +126,12 @@ def test_every_key_is_read(write: Callable[..., Path]) -> None:
     }
     assert "u" not in study.prices.ways
     assert study.hidden_causes == (
-        HiddenCause(of=("c", "d")),
-        HiddenCause(of=("NO", "d"), strength=Range(low=-0.1, likely=-0.1, high=-0.1)),
+        HiddenCause(of=("c", "d"), name="hidden common cause of c and d"),
+        HiddenCause(
+            of=("NO", "d"),
+            name="hidden common cause of NO and d",
+            strength=Range(low=-0.1, likely=-0.1, high=-0.1),
+        ),
     )
     assert study.prices.components["base"] == Component(
         always=True, setup=Fraction(6000), per_unit=Fraction("0.1"), yields=Fraction("0.35")
@@ -323,7 +327,7 @@ MESSAGES = {
     ),
     "a cause after its effect": (
         ("  x:\n", "  x:\n    when: 2\n", "  y:\n", "  y:\n    when: 1\n"),
-        "study.yaml:12: variables.y.caused_by.x: 'x' (when 2) comes later than 'y' (when 1), which"
+        "study.yaml:12: variables.y.caused_by.x: 'x' (when: 2) comes later than 'y' (when: 1), which"
         " follows from it.\n    Correct one of the two times, or turn an arrow round.",
     ),
     "a wave that is not there": (
@@ -353,7 +357,7 @@ MESSAGES = {
     ),
     "a hidden cause twice": (
         ("size:", "hidden_common_causes:\n  - [x, y]\n  - [y, x]\nsize:"),
-        "study.yaml:6: hidden_common_causes: gives hidden common cause of y and x again.\n"
+        "study.yaml:6: hidden_common_causes: gives a hidden common cause of y and x again.\n"
         "    Keep one of the two.",
     ),
     "an unknown route": (
@@ -401,7 +405,7 @@ MESSAGES = {
         ("setup: 10}", "setup: 999999999999999}", "per_unit: 0.50", "per_unit: 0.0001"),
         "study.yaml:15: components.visit: is too dear to be added up exactly: all amounts together"
         " reach 2^60 times 0.0001, the largest amount of money that divides them all.\n"
-        "    Lower the price or the number of records, or count in a larger unit of money.",
+        "    Lower prices or losses, or the number of records, or count in a larger unit of money.",
     ),
 }
 
@@ -474,7 +478,7 @@ def test_aliases_are_read_but_not_blown_up(write: Callable[..., Path]) -> None:
     layers = [f"l{i}: &l{i} [{', '.join([f'*l{i - 1}'] * 9)}]" for i in range(1, 12)]
     bomb = "\n".join(["l0: &l0 [x, x]", *layers, STUDY])
     assert faults_of(write(bomb)).splitlines()[0] == (
-        "study.yaml:1: file: stands for more than 1,000,000 values once its aliases are written out."
+        "study.yaml:1: file: stands for 110,324,037,761 values; at most 50,000 are read."
     )
 
 
