@@ -5,9 +5,9 @@ from dataclasses import dataclass, replace
 
 from planner.diagram import Diagram, Nodes, Path
 
-__all__ = ["Claim", "Finding", "Roles", "Separation"]
+__all__ = ["Claim", "Roles", "Separation"]
 
-NOBODY: Nodes = frozenset()
+NONE: Nodes = frozenset()
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -72,13 +72,13 @@ class Claim:
 class Roles:
     """Who plays which part in the planned analysis, besides treatment and outcome."""
 
-    covariates: Nodes = NOBODY
-    instruments: Nodes = NOBODY
-    mediators: Nodes = NOBODY
+    covariates: Nodes = NONE
+    instruments: Nodes = NONE
+    mediators: Nodes = NONE
 
     @property
-    def everyone(self) -> Nodes:
-        """All that must be measured for it."""
+    def nodes(self) -> Nodes:
+        """All that must be measured for it, besides treatment and outcome."""
         return self.covariates | self.instruments | self.mediators
 
     def without(self, node: int) -> "Roles":
@@ -90,25 +90,15 @@ class Roles:
             mediators=self.mediators - gone,
         )
 
-    def holding(self, node: int) -> "Roles":
+    def adjusting(self, node: int) -> "Roles":
         """Return the same roles with one more covariate."""
         return replace(self, covariates=self.covariates | {node})
-
-
-@dataclass(frozen=True, slots=True)
-class Finding:
-    """Something found out about a diagram: its kind, a path that shows it, who takes part."""
-
-    kind: str
-    path: Path = ()
-    nodes: tuple[int, ...] = ()
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
 class Separation:
     """That all paths between two groups are closed: what a route asks of its covariates."""
 
-    name: str
     diagram: Diagram
     """The diagram with the arrows taken out that do not count here."""
     starts: Nodes

@@ -9,7 +9,6 @@ A path is a tuple of nodes; the way its arrows point is looked up in the diagram
 from collections import deque
 from collections.abc import Callable, Collection, Iterable, Iterator, Mapping
 from dataclasses import dataclass
-from itertools import pairwise
 from typing import TypeVar
 
 __all__ = ["Diagram", "Nodes", "Path"]
@@ -189,18 +188,12 @@ class Diagram:
                     queue.append(child)
         return None
 
-    def is_open(self, path: Path, given: Nodes) -> bool:
-        """Say whether this path is open given these nodes, arrow by arrow."""
-        opened = self.ancestors(given)
-        for before, node, after in zip(path, path[1:], path[2:], strict=False):
-            is_collider = before in self.parents[node] and after in self.parents[node]
-            if is_collider and node not in opened:
-                return False
-            if not is_collider and node in given:
-                return False
-        return all(
-            one in self.parents[other] or other in self.parents[one]
-            for one, other in pairwise(path)
+    def colliders(self, path: Path) -> tuple[int, ...]:
+        """Return the inner nodes of a path at which two of its arrowheads meet."""
+        return tuple(
+            node
+            for before, node, behind in zip(path, path[1:], path[2:], strict=False)
+            if before in self.parents[node] and behind in self.parents[node]
         )
 
 

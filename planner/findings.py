@@ -1,12 +1,21 @@
-"""Findings by name: what the answer says of a diagram, free of node numbers."""
+"""What is found out about a diagram: by node inside, by name in an answer."""
 
 from dataclasses import dataclass
 from itertools import pairwise
 
-from planner.claims import Finding
 from planner.diagram import Diagram, Path
 
-__all__ = ["Reason", "Trail", "reason_of", "trail_of"]
+__all__ = ["Finding", "Reason", "Trail", "reason_of", "trail_of"]
+
+
+@dataclass(frozen=True, slots=True)
+class Finding:
+    """Something found out about a diagram: its kind, a path that shows it, who takes part."""
+
+    kind: str
+    path: Path = ()
+    nodes: tuple[int, ...] = ()
+    """For a finding about one node, that one first."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -6,8 +6,9 @@ part. The words come later.
 
 from collections.abc import Iterable
 
-from planner.claims import Claim, Finding, Roles, Separation
+from planner.claims import Claim, Roles, Separation
 from planner.diagram import Nodes, Path
+from planner.findings import Finding
 
 __all__ = ["after_treatment", "opened_by", "shielded", "through"]
 
@@ -78,9 +79,5 @@ def _shielded(separation: Separation, roles: Roles, node: int) -> Finding:
 
 def _closer(separation: Separation, path: Path, covariates: Nodes) -> int:
     """Return the first covariate on a path that the covariates close, and that is open without."""
-    parents = separation.diagram.parents
-    for before, node, behind in zip(path, path[1:], path[2:], strict=False):
-        is_collider = before in parents[node] and behind in parents[node]
-        if node in covariates and not is_collider:
-            return node
-    raise AssertionError("a path that only covariates close passes one of them")
+    colliders = separation.diagram.colliders(path)
+    return next(node for node in path[1:-1] if node in covariates and node not in colliders)

@@ -10,6 +10,8 @@ __all__ = ["MOST_COVARIANCES", "WORDS", "explained_shares", "loadings"]
 
 WORDS = {"weak": 0.1, "moderate": 0.3, "strong": 0.5}
 """Strengths in words, after Cohen (1988) for correlations; from memory."""
+MOST_CAUSES = 200
+"""Causes of one variable up to which its variance is added up."""
 MOST_COVARIANCES = 60_000
 """Covariances worked out before the check gives up, after about a third of a second."""
 
@@ -51,6 +53,9 @@ def explained_shares(causes: Causes, order: Sequence[str]) -> dict[str, float | 
     for name in order:
         known = [(cause, b) for cause, b in causes[name].items() if b is not None]
         if not known or len(known) < len(causes[name]):
+            continue
+        if covariances.gave_up or len(known) > MOST_CAUSES:
+            shares[name] = None
             continue
         terms = [(b * c, covariances.between(p, q)) for p, b in known for q, c in known]
         if all(covariance is not None for _, covariance in terms):

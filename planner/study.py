@@ -1,6 +1,6 @@
 """The study as plain, frozen data: what is asked, the diagram's arrows, what can be bought."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import date
 from fractions import Fraction
@@ -17,6 +17,7 @@ __all__ = [
     "Study",
     "Tolerance",
     "Variable",
+    "shown_time",
 ]
 
 HIDDEN = "hidden common cause of "
@@ -68,13 +69,10 @@ class HiddenCause:
     """An unmeasurable common cause of two variables that needs no name of its own."""
 
     of: tuple[str, str]
+    name: str
+    """Its name as a node of the diagram."""
     strength: Range | None = None
     """The correlation that it induces."""
-
-    @property
-    def name(self) -> str:
-        """Its name as a node of the diagram."""
-        return f"{HIDDEN}{self.of[0]} and {self.of[1]}"
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -102,6 +100,8 @@ class PriceSource:
     path: str
     digest: str
     valid_until: date | None
+    unread: tuple[str, ...] = ()
+    """Sheets of a workbook that hold something, but no price table."""
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -144,3 +144,16 @@ class Study:
     def unmeasurable(self) -> frozenset[str]:
         """The variables that no way measures."""
         return frozenset(name for name in self.variables if name not in self.prices.ways)
+
+
+def shown_time(when: Fraction, waves: Sequence[str]) -> str:
+    """Return a time as a study writes it: by the name of its wave, where there are waves.
+
+    Examples
+    --------
+    >>> shown_time(Fraction(2), ["first", "second"]), shown_time(Fraction(1, 2), [])
+    ('second', '0.5')
+    """
+    if waves and when.denominator == 1 and 1 <= when <= len(waves):
+        return waves[int(when) - 1]
+    return f"{float(when):g}"

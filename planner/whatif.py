@@ -5,13 +5,11 @@ from dataclasses import replace
 
 from costs.bill import needed_by
 from costs.faults import Fault, FaultyInput, Spot
-from costs.located import listed, nearest
-from costs.prices import Component, PriceList, Way
+from costs.located import nearest, shortened
+from costs.prices import MOST_RECORDS, Component, PriceList, Way
 from planner.study import Study
 
 __all__ = ["held", "with_records", "with_routes", "without"]
-
-MOST_RECORDS = 10**9
 
 
 def with_records(study: Study, records: int) -> Study:
@@ -23,12 +21,13 @@ def with_records(study: Study, records: int) -> Study:
 
 
 def with_routes(study: Study, routes: Sequence[str]) -> Study:
-    """Return the study with these routes allowed only, of those that it allows."""
+    """Return the study with these routes allowed only, all of which it must allow."""
+    for route in routes:
+        if route not in study.routes:
+            wrong = f"'{shortened(route)}' is no route that the study allows."
+            raise refusal("--route", wrong, nearest(route, study.routes))
     kept = tuple(route for route in study.routes if route in routes)
-    if not kept:
-        allowed = f"The study allows {listed(study.routes)}."
-        raise refusal("--route", f"leaves no route: {listed(routes)}.", allowed)
-    return changed(replace(study, routes=kept), f"--route {' --route '.join(routes)}")
+    return changed(replace(study, routes=kept), f"--route {' --route '.join(kept)}")
 
 
 def without(study: Study, name: str) -> Study:
@@ -44,7 +43,9 @@ def without(study: Study, name: str) -> Study:
     ways = list(ways_named(study, name))
     found = (name in prices.ways) + (name in prices.components) + len(ways)
     if found > 1:
-        raise refusal("--without", f"'{name}' is more than one thing.", "Rename one of them.")
+        raise refusal(
+            "--without", f"'{shortened(name)}' is more than one thing.", "Rename one of them."
+        )
     if name in prices.ways:
         left = replace(prices, ways={v: named for v, named in prices.ways.items() if v != name})
     elif name in prices.components:
@@ -109,6 +110,8 @@ def held(study: Study, name: str) -> Study:
     It costs nothing, needs nothing and burdens nobody; what it yields and how reliable it is stay.
     """
     ways = list(ways_named(study, name))
+    if len(ways) > 1:
+        raise refusal("--held", f"'{shortened(name)}' is more than one way.", "Rename one of them.")
     if not ways:
         raise unknown("--held", name, study)
     variable, way = ways[0]
@@ -142,7 +145,9 @@ def unknown(option: str, name: str, study: Study) -> FaultyInput:
     """Return the refusal of a name that is not there."""
     ways = [f"{v}.{way}" for v, named in study.prices.ways.items() for way in named]
     known = ways if option == "--held" else [*study.prices.ways, *study.prices.components, *ways]
-    return refusal(option, f"'{name}' is nothing that can be bought.", nearest(name, known))
+    gone = "or not any more" if study.changes else ""
+    wrong = f"'{shortened(name)}' is nothing that can be bought{f', {gone}' if gone else ''}."
+    return refusal(option, wrong, nearest(name, known))
 
 
 def refusal(option: str, wrong: str, mend: str) -> FaultyInput:

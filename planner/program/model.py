@@ -51,8 +51,13 @@ class Program:
         self.model.add_exactly_one(list(literals)).with_name(name)
 
     def at_most(self, name: str, terms: Iterable[Term], most: int, unless: Literal = False) -> None:
-        """Σ coefficient · literal ≤ most, unless a literal is true."""
-        if unless is not True:
+        """Σ coefficient · literal ≤ most, unless a literal is true.
+
+        A row that cannot be broken is not written: ``most`` may be more than the solver counts.
+        """
+        terms = list(terms)
+        largest = sum(coefficient for coefficient, literal in terms if literal is not False)
+        if unless is not True and largest > most:
             row = self.model.add(weighted(terms) <= most).with_name(name)
             if not isinstance(unless, bool):
                 row.only_enforce_if(unless.negated())

@@ -26,11 +26,12 @@ from fractions import Fraction
 from math import ceil, floor, log, prod
 
 from costs.bill import Bill
-from costs.tally import Name, Tally
+from costs.prices import Name, shown_name
+from costs.tally import Tally
 from planner.program.model import Literal, Program, Term, negation
 from planner.program.within import Within
 
-__all__ = ["Shop", "Spending", "write_purchases"]
+__all__ = ["Shop", "write_purchases", "write_spending"]
 
 LOG_SCALE = 2**40
 """Logarithms are counted in units of 2^-40."""
@@ -46,22 +47,25 @@ class Shop:
     """n_ℓ, rising; all above n₀."""
     covers: tuple[tuple[frozenset[Name], int], ...] = ()
     """Whoever buys all of these starts at least so many units."""
+    most_started: int | None
+    """Units that can be started at most: the size of the frame, or what can be counted."""
+    is_cut: bool = False
+    """What can be counted was less than the frame, and a plan met that needs more."""
 
     @classmethod
     def of(cls, within: Within) -> "Shop":
         """Return the shop of a search, before any losses are told apart."""
         tally = Tally.of(within.prices, within.terms)
-        tally.lines(tally.first_level)  # raises where the amounts cannot be counted
         frame = within.frame_size
-        # A frame that is too small for any plan leaves no level to forbid: see ``is_too_small``.
+        if frame is None or frame >= tally.first_level:
+            tally.lines(tally.first_level)  # raises where no plan can be added up
         levels = (frame + 1,) if frame is not None and frame >= tally.first_level else ()
-        return cls(within=within, tally=tally, levels=levels)
+        return cls(within=within, tally=tally, levels=levels, most_started=frame)
 
     @property
     def is_too_small(self) -> bool:
         """Whether the frame is too small for any plan at all."""
-        frame = self.within.frame_size
-        return frame is not None and frame < self.tally.first_level
+        return self.most_started is not None and self.most_started < self.tally.first_level
 
     def lossy(self, bill: Bill) -> frozenset[Name]:
         """Return what a bill buys with a yield below 1, what is always bought left out."""
@@ -75,45 +79,48 @@ class Shop:
 
     def with_level(self, bill: Bill) -> "Shop":
         """Return the shop that knows how many units this bill starts."""
-        frame = self.within.frame_size
-        level = bill.started if frame is None else min(bill.started, frame + 1)
+        level = bill.started
+        if self.most_started is not None:
+            level = min(level, self.most_started + 1)
         if level in self.levels:
             return replace(self, covers=(*self.covers, (self.lossy(bill), level)))
+        if level != (self.most_started or 0) + 1 and not self.tally.is_countable(level):
+            return self._cut(level)
         return replace(self, levels=tuple(sorted({*self.levels, level})))
 
+    def _cut(self, too_many: int) -> "Shop":
+        """Return the shop in which nobody starts more units than can be counted."""
+        most = self.tally.most_countable(self.tally.first_level, too_many)
+        levels = {level for level in self.levels if level <= most} | {most + 1}
+        covers = tuple((names, min(level, most + 1)) for names, level in self.covers)
+        return replace(
+            self, levels=tuple(sorted(levels)), covers=covers, most_started=most, is_cut=True
+        )
 
-@dataclass(frozen=True, slots=True)
-class Spending:
-    """The variables of the cost side."""
 
-    buy: dict[Name, Literal]
-    spent: tuple[Term, ...]
-    """(1), in whole units of the tally."""
-
-
-def write_purchases(program: Program, shop: Shop) -> Spending:
-    """Write (1) to (8) and return what they speak of."""
+def write_purchases(program: Program, shop: Shop) -> dict[Name, Literal]:
+    """Write (2) to (4) and return buy_p for each purchase."""
     buy = buy_literals(program, shop.tally)
     at_most_one_way(program, shop, buy)
     needs_come_along(program, shop, buy)
     burdens_are_kept(program, shop, buy)
+    return buy
+
+
+def write_spending(program: Program, shop: Shop, buy: dict[Name, Literal]) -> tuple[Term, ...]:
+    """Write (5) to (8) and return (1), in whole units of the tally."""
     beyond = levels_are_reached(program, shop, buy)
     spent = tuple(spending(program, shop, buy, beyond))
     budget_is_kept(program, shop, spent)
-    return Spending(buy, spent)
+    return spent
 
 
 def buy_literals(program: Program, tally: Tally) -> dict[Name, Literal]:
     """Return buy_p for each purchase; what is always bought has no variable."""
     return {
-        name: True if name in tally.always else program.literal(f"buy[{label(name)}]")
+        name: True if name in tally.always else program.literal(f"buy[{shown_name(name)}]")
         for name in tally.names
     }
-
-
-def label(name: Name) -> str:
-    """Return the name of a purchase as it stands in a bill."""
-    return name if isinstance(name, str) else ".".join(name)
 
 
 def at_most_one_way(program: Program, shop: Shop, buy: dict[Name, Literal]) -> None:
@@ -128,7 +135,7 @@ def needs_come_along(program: Program, shop: Shop, buy: dict[Name, Literal]) -> 
     """(3)  buy_p ≤ buy_c for each need c of p."""
     for name, literal in buy.items():
         for need in shop.within.prices.purchase(name).needs:
-            program.clause(f"needs[{label(name)}, {need}]", negation(literal), buy[need])
+            program.clause(f"needs[{shown_name(name)}, {need}]", negation(literal), buy[need])
 
 
 def burdens_are_kept(program: Program, shop: Shop, buy: dict[Name, Literal]) -> None:
@@ -147,7 +154,7 @@ def levels_are_reached(
     program: Program, shop: Shop, buy: dict[Name, Literal]
 ) -> dict[int, Literal]:
     """(5) and (7): return beyond_ℓ for each level; the level above the frame is never reached."""
-    tally, frame = shop.tally, shop.within.frame_size
+    tally, most = shop.tally, shop.most_started
     lossy = {
         name: loss(shop.within.prices.purchase(name).yields)
         for name in tally.names
@@ -155,7 +162,7 @@ def levels_are_reached(
     }
     beyond: dict[int, Literal] = {}
     for level in shop.levels:
-        above = frame is not None and level > frame
+        above = most is not None and level > most
         beyond[level] = False if above else program.literal(f"beyond[{level}]")
         losses = [(amount, buy[name]) for name, amount in lossy.items()]
         program.at_most(f"level[{level}]", losses, room(tally, level), unless=beyond[level])
@@ -191,9 +198,9 @@ def spending(
         more = shop.tally.lines(level)
         for name, literal in buy.items():
             if more[name] > lines[name]:
-                both = program.literal(f"both[{label(name)}, {level}]")
+                both = program.literal(f"both[{shown_name(name)}, {level}]")
                 program.clause(
-                    f"both[{label(name)}, {level}]", both, negation(literal), negation(reached)
+                    f"both[{shown_name(name)}, {level}]", both, negation(literal), negation(reached)
                 )
                 yield more[name] - lines[name], both
         lines = more

@@ -21,10 +21,11 @@ from typing import TYPE_CHECKING
 
 from costs.bill import Bill, bill_for
 from costs.prices import WayName
+from costs.tally import Overflow
 from planner.claims import Claim, Roles
 from planner.diagram import Nodes
 from planner.program.model import Literal, Program, RoleLiterals, Term, negation, weighted
-from planner.program.purchases import Shop, write_purchases
+from planner.program.purchases import Shop, write_purchases, write_spending
 from planner.program.within import Within
 
 if TYPE_CHECKING:
@@ -53,8 +54,6 @@ class Found:
     bill: Bill
     opened: tuple[tuple[Claim, Roles], ...]
     """The claim that each choice opens, and who plays which part in it."""
-    counted: Fraction
-    """What the program took it to cost; the bill may come to more."""
     bound: Fraction
     """No purchase within the limits comes to less, surcharges included."""
     proved: bool
@@ -66,6 +65,8 @@ class NothingFound:
     """No purchase was found; with ``proved`` there is none."""
 
     proved: bool
+    bound: Fraction = Fraction(0)
+    """If there is one, it comes to no less."""
 
 
 Solved = Found | NothingFound
@@ -76,28 +77,65 @@ def cheapest_purchase(
 ) -> Solved:
     """Return the cheapest purchase with which one claim of each choice comes true.
 
+    The program knows the levels of loss that were met before, so that it is never above the exact
+    bill. While its answers turn out dearer than it took them to be, it learns their level and is
+    solved again; the best purchase so far, and the highest bound, are kept.
+
     Raises
     ------
     Overflow
-        If the amounts cannot be counted in whole numbers.
+        If plans cannot be added up in whole numbers.
     """
     shop = Shop.of(within)
     if shop.is_too_small:
         return NothingFound(proved=True)
     deadline = monotonic() + seconds
+    best: Found | None = None
+    bound = Fraction(0)
+    hint: Sequence[int] = ()
     while True:
-        search = Search(choices, shop, write_rows, deadline)
-        solved = search.solved()
-        if isinstance(solved, NothingFound):
-            return solved
-        # (1) knows the levels met so far only, so that it is never above the exact bill.
-        assert not solved.proved or solved.counted <= solved.bill.total, "a best answer is best"
-        broken = within.broken(solved.bill)
-        if solved.bill.total == solved.counted and not broken:
-            return solved
+        search = Search(choices, shop, write_rows, deadline, best, hint)
+        draft = search.draft()
+        bound = max(bound, draft.bound)
+        if draft.found is None:
+            return settled(draft, best, bound, shop)
+        found, hint = draft.found, draft.answer
+        if draft.proved:
+            assert draft.counted <= found.bill.total, "a best answer is best"
+        is_kept = not within.broken(found.bill) and shop.tally.is_countable(found.bill.started)
+        if draft.proved and is_kept and found.bill.total == draft.counted:
+            return replace(found, bound=draft.counted, proved=True)
+        if is_kept and (best is None or found.bill.total < best.bill.total):
+            best = found
         if monotonic() >= deadline:
-            return NothingFound(proved=False) if broken else replace(solved, proved=False)
-        shop = shop.with_level(solved.bill)
+            return settled(draft, best, bound, shop)
+        shop = shop.with_level(found.bill)
+
+
+def settled(draft: "Draft", best: Found | None, bound: Fraction, shop: Shop) -> Solved:
+    """Return what can be said when the last run gave nothing, or the time is over."""
+    if best is not None:
+        # A program without an answer says that nothing undercuts the best so far.
+        proved = draft.found is None and draft.proved
+        bound = best.bill.total if proved else min(bound, best.bill.total)
+        return replace(best, bound=bound, proved=bound == best.bill.total)
+    if draft.found is None and draft.proved and shop.is_cut:
+        raise Overflow("leads to more units, or to a larger sum, than can be counted.")
+    return NothingFound(proved=draft.found is None and draft.proved, bound=bound)
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
+class Draft:
+    """The answer of one program, before its bill is compared with what the program knew."""
+
+    found: Found | None
+    answer: Sequence[int]
+    """The value of each variable; empty where no answer was found."""
+    counted: Fraction
+    """What the program took it to cost."""
+    bound: Fraction
+    proved: bool
+    """The answer is a best one of this program, or there is none."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -105,55 +143,74 @@ class Outcome:
     """What one run of the solver gave."""
 
     answer: Sequence[int]
-    """The value of each variable; empty where no answer was found."""
     bound: int
     proved: bool
-    """The answer is a best one, or there is none."""
 
 
 class Search:
     """One program, and the wishes that are solved for one after the other."""
 
     def __init__(
-        self, choices: Sequence[Choice], shop: Shop, write_rows: WriteRows, deadline: float
+        self,
+        choices: Sequence[Choice],
+        shop: Shop,
+        write_rows: WriteRows,
+        deadline: float,
+        best: Found | None = None,
+        hint: Sequence[int] = (),
     ) -> None:
         self._choices = choices
         self._shop = shop
         self._deadline = deadline
         self._program = Program()
-        self._spending = write_purchases(self._program, shop)
+        self._buy = write_purchases(self._program, shop)
         self._written = [
             write_choice(self._program, number, choice, shop.within, write_rows)
             for number, choice in enumerate(choices)
         ]
-        self._answer: Sequence[int] = ()
-        """The value of each variable in the best answer so far."""
+        # Levels come last, so that the answer of a program with fewer of them is a hint.
+        self._spent = write_spending(self._program, shop, self._buy)
+        self._money = shop.tally.unit * shop.within.terms.surcharge
+        if best is not None:
+            most = best.bill.total / self._money
+            self._program.at_most("no dearer than the best so far", self._spent, int(most))
+        self._answer: Sequence[int] = hint
+        """The value of each variable in the best answer so far, or a guess at it."""
+        self._wish: Sequence[Term] = self._spent
 
-    def solved(self) -> Solved:
+    def draft(self) -> Draft:
         """Return the cheapest purchase that the program knows, ties resolved."""
-        wish: Sequence[Term] = self._spending.spent
-        outcome = self._minimise(wish)
-        if not self._answer:
-            return NothingFound(proved=outcome.proved)
-        counted = self._value(wish)
+        outcome = self._minimise()
+        if not outcome.answer:
+            bound = Fraction(0)
+            return Draft(found=None, answer=(), counted=bound, bound=bound, proved=outcome.proved)
+        counted = self._value(self._spent)
         if outcome.proved:
-            for following in self._ties():
-                self._hold(wish)
-                wish = following
-                if not self._minimise(wish).proved:
-                    break
-        money = self._shop.tally.unit * self._shop.within.terms.surcharge
-        return Found(
-            bill=bill_for(self._ways(), self._shop.within.prices, self._shop.within.terms),
+            # One wish after the other, until one of them runs out of time.
+            all(
+                self._prefer(wish)
+                for wishes in (self._fewer, self._smaller_names, self._earlier, self._better_ways)
+                for wish in wishes()
+            )
+        bound = (counted if outcome.proved else outcome.bound) * self._money
+        terms, prices = self._shop.within.terms, self._shop.within.prices
+        found = Found(
+            bill=bill_for(self._ways(), prices, terms),
             opened=tuple(self._opened()),
-            bound=(counted if outcome.proved else outcome.bound) * money,
-            counted=counted * money,
+            bound=bound,
+            proved=False,
+        )
+        return Draft(
+            found=found,
+            answer=self._answer,
+            counted=counted * self._money,
+            bound=bound,
             proved=outcome.proved,
         )
 
-    def _minimise(self, wish: Sequence[Term]) -> Outcome:
+    def _minimise(self) -> Outcome:
         model = self._program.model
-        model.minimize(weighted(wish))
+        model.minimize(weighted(self._wish))
         model.clear_hints()  # type: ignore[no-untyped-call]  # the one method without types
         for index, value in enumerate(self._answer):
             model.add_hint(model.get_bool_var_from_proto_index(index), value)
@@ -161,23 +218,35 @@ class Search:
         self._answer = outcome.answer or self._answer
         return outcome
 
-    def _hold(self, wish: Sequence[Term]) -> None:
-        self._program.at_most("held", wish, self._value(wish))
+    def _prefer(self, wish: Sequence[Term]) -> bool:
+        """Hold the last wish at its best, and solve for the next one."""
+        self._program.at_most("held", self._wish, self._value(self._wish))
+        self._wish = wish
+        return self._minimise().proved
 
-    def _ties(self) -> Iterator[list[Term]]:
-        """(10) and (11); what is yielded is solved for before the next one is asked for."""
+    def _fewer(self) -> Iterator[Sequence[Term]]:
+        """(10)."""
+        yield [(1, literal) for literal in self._program.measured.values()]
+
+    def _smaller_names(self) -> Iterator[Sequence[Term]]:
+        """(11): of two lists of one length the smaller has the smaller name where they differ."""
         measured = self._program.measured
-        yield [(1, literal) for literal in measured.values()]
         if len(measured) <= MOST_DIGITS:
-            # Of two lists of one length the smaller has the smaller name where they first differ.
             names = sorted(measured, reverse=True)
             yield [(-(2**digit), measured[name]) for digit, name in enumerate(names)]
-        yield from self._digits(
-            [{rank: opens for rank, (opens, _) in enumerate(written)} for written in self._written]
+
+    def _earlier(self) -> Iterator[Sequence[Term]]:
+        """(11): the first of the claims that tie."""
+        yield from digits(
+            [{rank: opens for rank, (opens, _) in enumerate(each)} for each in self._written]
         )
+
+    def _better_ways(self) -> Iterator[Sequence[Term]]:
+        """(11): who is measured is settled by now; of ways that tie, the better reading."""
+        measured = self._program.measured
         for literal in measured.values():
             self._program.equal("held", [(1, literal)], [(self._of(literal), True)])
-        yield from self._digits(
+        yield from digits(
             [self._ranked(name) for name in sorted(measured) if self._of(measured[name])]
         )
 
@@ -185,22 +254,7 @@ class Search:
         """Return the ways of a variable by rank: better readings first, then smaller names."""
         ways = self._shop.within.prices.ways[variable]
         order = sorted(ways, key=lambda way: (-ways[way].reliability, way))
-        return {rank: self._spending.buy[variable, way] for rank, way in enumerate(order)}
-
-    def _digits(self, columns: Sequence[Mapping[int, Literal]]) -> Iterator[list[Term]]:
-        """Return the wish for the smallest number of which each column is a digit.
-
-        A number of more than ``MOST_DIGITS`` bits is wished for in several parts.
-        """
-        parts: list[tuple[int, list[Term]]] = [(1, [])]
-        for column in reversed([column for column in columns if len(column) > 1]):
-            weight, terms = parts[-1]
-            if weight * len(column) >= 2**MOST_DIGITS:
-                weight, terms = 1, []
-                parts.append((weight, terms))
-            terms.extend((weight * digit, literal) for digit, literal in column.items())
-            parts[-1] = (weight * len(column), terms)
-        yield from (terms for _, terms in reversed(parts) if terms)
+        return {rank: self._buy[variable, way] for rank, way in enumerate(order)}
 
     def _of(self, literal: Literal) -> int:
         return int(literal) if isinstance(literal, bool) else self._answer[literal.index]
@@ -209,13 +263,11 @@ class Search:
         return sum(coefficient * self._of(literal) for coefficient, literal in terms)
 
     def _ways(self) -> list[WayName]:
-        """Return the ways that are taken, treatment and outcome first, the others by name."""
-        taken = [
+        return [
             name
-            for name, literal in self._spending.buy.items()
+            for name, literal in self._buy.items()
             if isinstance(name, tuple) and self._of(literal)
         ]
-        return sorted(taken)
 
     def _opened(self) -> Iterator[tuple[Claim, Roles]]:
         for choice, written in zip(self._choices, self._written, strict=True):
@@ -225,6 +277,22 @@ class Search:
 
     def _chosen(self, literals: Mapping[int, Literal]) -> Nodes:
         return frozenset(node for node, literal in literals.items() if self._of(literal))
+
+
+def digits(columns: Sequence[Mapping[int, Literal]]) -> Iterator[list[Term]]:
+    """Return the wish for the smallest number of which each column is a digit.
+
+    A number of more than ``MOST_DIGITS`` bits is wished for in several parts, the first ones first.
+    """
+    parts: list[tuple[int, list[Term]]] = [(1, [])]
+    for column in reversed([column for column in columns if len(column) > 1]):
+        weight, terms = parts[-1]
+        if weight * len(column) >= 2**MOST_DIGITS:
+            weight, terms = 1, []
+            parts.append((weight, terms))
+        terms.extend((weight * digit, literal) for digit, literal in column.items())
+        parts[-1] = (weight * len(column), terms)
+    yield from (terms for _, terms in reversed(parts) if terms)
 
 
 def write_choice(

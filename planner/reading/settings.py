@@ -5,7 +5,7 @@ from fractions import Fraction
 from typing import Any
 
 from costs.located import Located
-from costs.prices import Burden, Terms
+from costs.prices import MOST_RECORDS, Burden, Terms
 from costs.reading import PRICE_PLACES
 from planner.study import ClusterDesign, Tolerance
 
@@ -20,33 +20,33 @@ __all__ = [
     "read_waves",
 ]
 
-MOST_RECORDS = 10**9
-"""More records are out of reach."""
 LARGEST_SURCHARGE = 10
 """A share: 10 is ten times the direct costs, so a larger one was meant in per cent."""
 TARGETS = ("half_width", "detect", "power", "spend")
 SIZE_KEYS = ("records", *TARGETS, "confidence", "in")
 
 Found = Mapping[str, Located]
+"""The keys of a study file, those of ``fieldwork`` among them."""
 
 
 def read_text(found: Found, key: str) -> str:
     """Return a text on one line, empty where there is none."""
-    text = found[key].text() if key in found else None
-    return " ".join((text or "").split())
+    return (found[key].line() or "") if key in found else ""
 
 
 def read_terms(found: Found, burdens: Mapping[str, Burden]) -> Terms | None:
-    """Return the number of records, and what is lost and added; None if it is at fault."""
+    """Return the number of records, and what is lost and added; None if that is at fault."""
     records = read_records(found["size"]) if "size" in found else None
+    usable = read_usable(found)
+    overhead, contingency = read_surcharge(found, "overhead"), read_surcharge(found, "contingency")
     if records is None:
         return None
     return Terms(
         records=records,
-        usable=read_usable(found),
+        usable=usable,
         burdens=burdens,
-        overhead=read_surcharge(found, "overhead"),
-        contingency=read_surcharge(found, "contingency"),
+        overhead=overhead,
+        contingency=contingency,
     )
 
 
@@ -65,15 +65,14 @@ def read_records(place: Located) -> int | None:
         )
     if "records" in found:
         return found["records"].integer(least=1, most=MOST_RECORDS)
-    if not targets and place.is_mapping:
+    if not targets and (place.is_mapping or place.is_empty):
         place.fault("does not say how many records.", "Write 'size: {records: 400}'.")
     return None
 
 
 def read_usable(found: Found) -> Fraction:
     """Return the share of complete records that can be used."""
-    fieldwork = fieldwork_entries(found)
-    usable = fieldwork["usable"].number(above=0, most=1) if "usable" in fieldwork else None
+    usable = found["usable"].number(above=0, most=1) if "usable" in found else None
     return Fraction(1) if usable is None else usable
 
 
@@ -88,35 +87,29 @@ def read_budget(found: Found) -> Fraction | None:
     return found["budget"].number(least=0, places=PRICE_PLACES) if "budget" in found else None
 
 
-def fieldwork_entries(found: Found) -> Found:
-    """Return the entries of ``fieldwork``."""
-    keys = ("usable", "design_effect", "frame_size", "clusters")
-    return found["fieldwork"].entries(keys) if "fieldwork" in found else {}
-
-
 def read_frame_size(found: Found) -> int | None:
     """Return the number of units that can be started at most."""
-    fieldwork = fieldwork_entries(found)
-    return fieldwork["frame_size"].integer(least=1) if "frame_size" in fieldwork else None
+    return found["frame_size"].integer(least=1) if "frame_size" in found else None
 
 
 def read_design_effect(
     found: Found, routes: Collection[str]
 ) -> float | dict[str, float] | ClusterDesign:
     """Return the design effect of the contrast: a number, one a route, or the clusters."""
-    fieldwork = fieldwork_entries(found)
-    given = [fieldwork[key] for key in ("design_effect", "clusters") if key in fieldwork]
+    given = [found[key] for key in ("design_effect", "clusters") if key in found]
     if len(given) > 1:
         given[1].fault(
             "stands beside 'design_effect', which it would give.", "Keep one of the two."
         )
     if not given:
         return 1.0
-    if "clusters" in fieldwork:
-        return read_clusters(fieldwork["clusters"])
+    if "clusters" in found:
+        return read_clusters(found["clusters"])
     if not given[0].is_mapping:
         return float(given[0].number(above=0) or 1)
     parts = given[0].entries((*routes, "clusters"))
+    if "clusters" in parts and len(parts) > 1:
+        parts["clusters"].fault("stands beside other entries.", "Keep the clusters only.")
     if "clusters" in parts:
         return read_clusters(parts["clusters"])
     return {route: float(place.number(above=0) or 1) for route, place in parts.items()}

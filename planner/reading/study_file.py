@@ -72,6 +72,8 @@ KEYS = (
     "waves",
     "prices",
 )
+MOST_COMPONENTS = 5_000
+FIELDWORK_KEYS = ("usable", "design_effect", "frame_size", "clusters")
 LATER_KEYS = ("effects", "doubts", "rivals", "routes_wanted", "spare", "subgroup")
 WANTED = {
     "effect": "Write 'effect: {treatment: …, outcome: …}'.",
@@ -112,10 +114,11 @@ def read_all(path: Path, prices: Sequence[Path] | None, faults: Faults) -> Study
     found = entries_of(tree)
     named = named_lists(file.path, found) if prices is None else prices
     lists = [each for name in named if (each := read_price_file(name, faults)) is not None]
-    parts = parts_of(found, lists)
+    whole = len(lists) == len(named) and not any(faults.spoil(str(each)) for each in named)
+    parts = parts_of(found, lists, whole=whole)
     study = study_of(file, found, lists, parts)
     if study is not None and not faults:
-        check_countable(study, parts.listed)
+        check_countable(study, found["size"], parts.listed)
     return study
 
 
@@ -135,11 +138,13 @@ def collector_paused() -> Iterator[None]:
 
 
 def entries_of(tree: Located) -> dict[str, Located]:
-    """Return the keys of a study file; those that no study can do without are there."""
+    """Return the keys of a study file, and those of its fieldwork beside them."""
     found = tree.entries(KEYS, LATER_KEYS, MEANT)
     for key, mend in WANTED.items():
         if key not in found and tree.is_mapping:
             tree.below(key).fault("is missing.", mend)
+    if "fieldwork" in found:
+        found |= found["fieldwork"].entries(FIELDWORK_KEYS)
     return found
 
 
@@ -160,15 +165,17 @@ class Parts:
     burdens: Mapping[str, Burden]
     listed: tuple[Listed, ...]
     """Everything that can be bought, from the study file and then from the price lists."""
+    whole: bool
+    """Every price list could be read, so that what is not listed is really missing."""
 
 
-def parts_of(found: Mapping[str, Located], lists: Sequence[PriceFile]) -> Parts:
+def parts_of(found: Mapping[str, Located], lists: Sequence[PriceFile], *, whole: bool) -> Parts:
     """Read the diagram and everything that can be bought."""
     waves = read_waves(found)
-    drawn = read_variables(found["variables"], waves) if "variables" in found else {}
-    components = found["components"].named() if "components" in found else {}
+    numbers = {wave: number for number, wave in enumerate(waves, 1)}
+    drawn = read_variables(found["variables"], numbers) if "variables" in found else {}
     own = [way for each in drawn.values() for way in each.listed]
-    own += [listed_component(name, place) for name, place in components.items()]
+    own += read_components(found["components"]) if "components" in found else []
     others = [each for prices in lists for each in prices.listed]
     hidden: tuple[HiddenCause, ...] = ()
     if drawn:
@@ -186,7 +193,18 @@ def parts_of(found: Mapping[str, Located], lists: Sequence[PriceFile]) -> Parts:
         hidden_causes=hidden,
         burdens=read_burdens(found["burdens"]) if "burdens" in found else {},
         listed=(*own, *others),
+        whole=whole,
     )
+
+
+def read_components(place: Located) -> list[Listed]:
+    """Return the components of the study file."""
+    named = place.named()
+    if len(named) > MOST_COMPONENTS:
+        wrong = f"names {len(named):,} components; at most {MOST_COMPONENTS:,} are read."
+        place.fault(wrong, "Leave out those that nothing needs.")
+        return []
+    return [listed_component(name, each) for name, each in named.items()]
 
 
 def study_of(
@@ -195,21 +213,24 @@ def study_of(
     """Return the study; None where a part that everything hangs on is at fault."""
     drawn = parts.drawn
     prices = prices_of(parts)
-    check_measurable(drawn, prices)
+    if parts.whole:
+        check_measurable(drawn, prices)
     order = check_arrows(drawn)
     unchecked = 0
     if order is not None:
-        check_timing(drawn, order)
+        check_timing(drawn, order, parts.waves)
         unchecked = check_strengths(drawn, parts.hidden_causes, parts.default_strength, order)
-    effect = read_effect(found["effect"], drawn, prices) if "effect" in found and drawn else None
+    effect = None
+    if "effect" in found and drawn:
+        effect = read_effect(found["effect"], drawn, prices.ways if parts.whole else drawn)
     terms = read_terms(found, parts.burdens)
     settings = read_settings(found, lists, drawn)
+    title, unit = read_text(found, "title"), read_text(found, "unit")
     if effect is None or terms is None:
         return None
     return Study(
-        title=read_text(found, "title")
-        or f"What is the effect of {effect.treatment} on {effect.outcome}?",
-        unit=read_text(found, "unit") or "unit",
+        title=title or f"What is the effect of {effect.treatment} on {effect.outcome}?",
+        unit=unit or "unit",
         effects=(effect,),
         variables={name: each.variable for name, each in drawn.items()},
         hidden_causes=parts.hidden_causes,
@@ -246,12 +267,17 @@ def read_settings(
 def source_of(prices: PriceFile) -> PriceSource:
     """Return what the study remembers of a price-list file."""
     file = prices.file
-    return PriceSource(path=str(file.path), digest=file.digest, valid_until=prices.valid_until)
+    return PriceSource(
+        path=str(file.path),
+        digest=file.digest,
+        valid_until=prices.valid_until,
+        unread=prices.unread,
+    )
 
 
 def prices_of(parts: Parts) -> PriceList:
     """Return all that can be bought, ways in the order of the study's variables."""
-    prices = combined(parts.listed, parts.burdens)
+    prices = combined(parts.listed, parts.burdens, complete=parts.whole)
     ordered = {name: prices.ways[name] for name in parts.drawn if name in prices.ways}
     return PriceList(ways=ordered, components=prices.components)
 

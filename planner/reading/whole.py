@@ -1,18 +1,18 @@
 """What can be said only of the study as a whole: names, circles, timing, prices, strengths."""
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Collection, Iterable, Mapping, Sequence
 from fractions import Fraction
 from graphlib import TopologicalSorter
-from math import ceil, sqrt
+from math import ceil, floor, log10, sqrt
 
-from costs.circles import circles
-from costs.located import Located
-from costs.prices import PriceList
+from costs.circles import circles, spelt_out
+from costs.located import Located, shortened
+from costs.prices import Name, PriceList
 from costs.reading import Listed
 from costs.tally import Overflow, Tally
 from planner.reading.variables import DrawnVariable
 from planner.strengths import explained_shares, loadings
-from planner.study import Effect, HiddenCause, Range, Study
+from planner.study import Effect, HiddenCause, Range, Study, shown_time
 
 __all__ = [
     "check_arrows",
@@ -30,7 +30,7 @@ ALMOST_ALL = 1 - 1e-9
 """A share of explained variance above this counts as all of it: rounding forgiven."""
 
 
-def read_effect(place: Located, drawn: Drawn, prices: PriceList) -> Effect | None:
+def read_effect(place: Located, drawn: Drawn, measurable: Collection[str]) -> Effect | None:
     """Return the effect that is asked for; both ends are known, different and measurable."""
     found = place.entries(("treatment", "outcome"))
     names = {}
@@ -39,9 +39,11 @@ def read_effect(place: Located, drawn: Drawn, prices: PriceList) -> Effect | Non
             place.fault(f"names no {role}.", "Write it like {treatment: first, outcome: second}.")
         elif (name := known_variable(found[role], drawn)) is not None:
             names[role] = name
-            if name not in prices.ways:
+            if name not in measurable:
                 mend = "Give it a way of measuring: no study can do without."
-                found[role].fault(f"'{name}' is the {role}, and cannot be measured.", mend)
+                found[role].fault(
+                    f"'{shortened(name)}' is the {role}, and cannot be measured.", mend
+                )
     if len(names) < 2:
         return None
     if names["treatment"] == names["outcome"]:
@@ -61,7 +63,8 @@ def known_variable(place: Located, drawn: Drawn) -> str | None:
     name = place.name()
     if name is not None and name not in drawn:
         place.fault(
-            f"names the variable '{name}', which is not there.", place.source.nearest(name, drawn)
+            f"names the variable '{shortened(name)}', which is not there.",
+            place.source.nearest(name, drawn),
         )
         return None
     return name
@@ -72,7 +75,7 @@ def check_priced(places: Mapping[str, Located], drawn: Drawn) -> None:
     for name, place in places.items():
         if name not in drawn:
             mend = place.source.nearest(name, drawn)
-            place.fault(f"measures '{name}', which is no variable of the study.", mend)
+            place.fault(f"measures '{shortened(name)}', which is no variable of the study.", mend)
 
 
 def check_measurable(drawn: Drawn, prices: PriceList) -> None:
@@ -101,19 +104,19 @@ def check_arrows(drawn: Drawn) -> list[str] | None:
         for cause, place in each.cause_places.items():
             if cause not in drawn:
                 mend = place.source.nearest(cause, drawn)
-                place.fault(f"names the cause '{cause}', which is no variable.", mend)
+                place.fault(f"names the cause '{shortened(cause)}', which is no variable.", mend)
     before = {name: [c for c in each.cause_places if c in drawn] for name, each in drawn.items()}
     found = circles(before)
     for circle in found:
         place = drawn[circle[1]].cause_places[circle[0]]
         place.fault(
-            f"closes a circle: {' → '.join(circle)}.",
+            f"closes a circle: {spelt_out(circle, ' → ')}.",
             "A cause cannot follow from its effect: take one of these arrows out.",
         )
     return None if found else list(TopologicalSorter(before).static_order())
 
 
-def check_timing(drawn: Drawn, order: Sequence[str]) -> None:
+def check_timing(drawn: Drawn, order: Sequence[str], waves: Sequence[str]) -> None:
     """Say which causes come later than their effect, also where untimed variables lie between."""
     latest: dict[str, str] = {}
     """For each variable, whichever of itself and its causes has the latest time."""
@@ -128,9 +131,10 @@ def check_timing(drawn: Drawn, order: Sequence[str]) -> None:
                 continue
             time = time_of(drawn, before)
             if own is not None and time > own:
+                first, then = shown_time(time, waves), shown_time(own, waves)
                 place.fault(
-                    f"'{before}' ({shown_time(drawn, before)}) comes later than '{name}'"
-                    f" ({shown_time(drawn, name)}), which follows from it.",
+                    f"'{shortened(before)}' (when: {first}) comes later than"
+                    f" '{shortened(name)}' (when: {then}), which follows from it.",
                     "Correct one of the two times, or turn an arrow round.",
                 )
             elif name not in latest or time > time_of(drawn, latest[name]):
@@ -144,11 +148,6 @@ def time_of(drawn: Drawn, name: str) -> Fraction:
     return when
 
 
-def shown_time(drawn: Drawn, name: str) -> str:
-    """Return the time of a variable as it is shown."""
-    return f"when {float(time_of(drawn, name)):g}"
-
-
 def check_strengths(
     drawn: Drawn, hidden: Sequence[HiddenCause], default: Range | None, order: Sequence[str]
 ) -> int:
@@ -159,7 +158,7 @@ def check_strengths(
     int
         Variables for which that would take too long to say.
     """
-    causes = {name: coefficients(each, default) for name, each in drawn.items()}
+    causes = {name: coefficients(each, drawn, default) for name, each in drawn.items()}
     for cause in hidden:
         both = likely(cause.strength)
         # An arrow without a strength of its own takes the default, and these arrows are no others.
@@ -171,8 +170,9 @@ def check_strengths(
     shares = explained_shares(causes, names)
     for name, share in shares.items():
         if share is not None and share > ALMOST_ALL:
-            # The largest factor of three decimals that leaves some noise.
-            factor = (ceil(1000 / sqrt(share) - 1e-9) - 1) / 1000
+            # The largest factor of three digits that leaves some noise.
+            places = 10 ** (3 + max(0, floor(log10(share) / 2)))
+            factor = (ceil(places / sqrt(share) - 1e-9) - 1) / places
             drawn[name].place.fault(
                 f"is explained to {100 * share:.1f} % by its causes; less than 100 % is possible.",
                 f"Multiply the strengths of all arrows into it by {factor:g} or less.",
@@ -180,23 +180,34 @@ def check_strengths(
     return sum(share is None for share in shares.values())
 
 
-def check_countable(study: Study, every: Iterable[Listed]) -> None:
-    """Say whether the amounts are too large to be added up in whole numbers."""
+def check_countable(study: Study, size: Located, every: Iterable[Listed]) -> None:
+    """Say whether no plan could be added up in whole numbers, with the dearest item's line."""
     tally = Tally.of(study.prices, study.terms)
     try:
         tally.lines(tally.first_level)
     except Overflow as overflow:
-        for each in every:
-            if overflow.name in (each.name, f"{each.variable}.{each.name}"):
-                each.place.fault(
-                    f"is too dear to be added up exactly: {overflow}",
-                    "Lower the price or the number of records, or count in a larger unit of money.",
-                )
+        places: dict[Name, Located] = {
+            (each.variable, each.name) if each.variable else each.name: each.place for each in every
+        }
+        place = size if overflow.name is None else places[overflow.name]
+        place.fault(
+            str(overflow),
+            "Lower prices or losses, or the number of records, or count in a larger unit of money.",
+        )
 
 
-def coefficients(each: DrawnVariable, default: Range | None) -> Mapping[str, float | None]:
-    """Return the likely strength of each arrow into a variable; None where it has none."""
-    return {cause: likely(strength or default) for cause, strength in each.variable.causes.items()}
+def coefficients(
+    each: DrawnVariable, drawn: Drawn, default: Range | None
+) -> Mapping[str, float | None]:
+    """Return the likely strength of each arrow into a variable; None where it has none.
+
+    A cause that is no variable has been told of; none of the strengths is taken at its word then.
+    """
+    causes = each.variable.causes
+    known = {cause: strength for cause, strength in causes.items() if cause in drawn}
+    if len(known) < len(causes):
+        return dict.fromkeys(known)
+    return {cause: likely(strength or default) for cause, strength in known.items()}
 
 
 def likely(strength: Range | None) -> float | None:

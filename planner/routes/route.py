@@ -1,11 +1,12 @@
 """What a route has to offer: a folder whose modules hold the functions named here."""
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from typing import Protocol
 
-from planner.claims import Claim, Finding, Roles
+from planner.claims import Claim, Roles
 from planner.diagram import Nodes
+from planner.findings import Finding
 from planner.program import Literal, Program, RoleLiterals
 
 __all__ = ["Route", "Words"]
@@ -41,6 +42,9 @@ class Criterion(Protocol):
     def breaches(self, claim: Claim, roles: Roles) -> Iterator[Finding]:
         """Return each condition that the roles fail; none if they are valid."""
 
+    def opening(self, claim: Claim, measurable: Nodes) -> Roles | None:
+        """Return roles that open the route, whatever they cost; None just if there are none."""
+
 
 class Rows(Protocol):
     """What ``rows.py`` offers: the same conditions as rows of the integer program."""
@@ -60,11 +64,11 @@ class Reasons(Protocol):
     def needed(self, claim: Claim, roles: Roles, node: int) -> Finding:
         """Say what would go wrong without one of the roles."""
 
-    def left_out(self, claim: Claim, roles: Roles, node: int) -> Finding:
-        """Say why another measurable node is not wanted."""
+    def left_out(self, claim: Claim, roles: Roles, nodes: Iterable[int]) -> dict[int, Finding]:
+        """Say why each of some other measurable nodes is not wanted."""
 
     def hindrances(self, claim: Claim, measurable: Nodes) -> tuple[Finding, ...]:
-        """Say why the route cannot be taken, whatever is bought; nothing if it can."""
+        """Say why the route cannot be taken, whatever is bought; for routes with no opening."""
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)

@@ -63,7 +63,7 @@ def test_a_study_in_figures(write: Callable[..., Path]) -> None:
         ),
         (
             ("size:", "default_strength: weak\nsize:", "{x: 0.3}", "[x]"),
-            "1 arrows rest on the default strength.",
+            "1 arrow rests on the default strength.",
         ),
     ],
 )  # fmt: skip

@@ -10,8 +10,8 @@ from costs.tally import Overflow
 from planner import read_study, recommend
 from planner.claims import Claim
 from planner.diagram import Diagram
-from planner.planning import Answer, cheapest
 from planner.program import Choice, NothingFound, Within
+from planner.search import Answer, Deadline, cheapest
 from tests.conftest import ROOT
 from tests.enumeration import Enumeration, limits_in
 
@@ -43,7 +43,7 @@ def within(ways: dict[str, dict[str, Way]], records: int = 10, **more: object) -
 
 def solved(*choices: tuple[Claim, ...], within: Within) -> Answer:
     """The answer, which must be there and proved."""
-    answer = cheapest([Choice(each) for each in choices], within, seconds=60)
+    answer = cheapest([Choice(each) for each in choices], within, deadline=Deadline(60))
     assert isinstance(answer, Answer)
     assert answer.proved
     assert answer.lower_bound == answer.bill.total
@@ -54,7 +54,7 @@ def test_the_cheaper_of_two_places_to_close_a_path_is_measured() -> None:
     answer = solved((claim(),), within=within({"c": {"w": price(3)}, "d": {"w": price(2)}}))
     # 10 records · 2
     assert answer.bill.total == 20
-    assert dict(answer.measure) == {"x": "w", "y": "w", "d": "w"}
+    assert dict(answer.bill.ways) == {"x": "w", "y": "w", "d": "w"}
 
 
 def test_a_shared_component_makes_the_dearer_way_the_cheaper_one() -> None:
@@ -146,9 +146,9 @@ def test_a_loss_that_fits_exactly_starts_no_unit_more() -> None:
 def test_the_frame_shuts_out_lossy_readings() -> None:
     ways = {"c": {"w": price(1, yields=Fraction(1, 2))}, "d": {"w": price(9)}}
     answer = solved((claim(),), within=within(ways, frame_size=19))
-    assert dict(answer.measure)["d"] == "w"
+    assert dict(answer.bill.ways)["d"] == "w"
     assert solved((claim(),), within=within(ways, frame_size=20)).bill.started == 20
-    nothing = cheapest([Choice((claim(),))], within(ways, frame_size=9), seconds=60)
+    nothing = cheapest([Choice((claim(),))], within(ways, frame_size=9), deadline=Deadline(60))
     assert nothing == NothingFound(proved=True)
 
 
@@ -160,7 +160,7 @@ def test_a_burden_is_added_up_over_ways_and_components() -> None:
     }
     visit = {"visit": Component(takes={"minutes": Fraction("2.5")})}
     answer = solved((claim(),), within=within(ways, components=visit, burdens=burdens))
-    assert dict(answer.measure)["d"] == "w"
+    assert dict(answer.bill.ways)["d"] == "w"
     burdens = {"minutes": Burden(price=Fraction(2), limit=Fraction("5.5"))}
     answer = solved((claim(),), within=within(ways, components=visit, burdens=burdens))
     # 10 · (1 + 2 · 5.5)
@@ -175,7 +175,9 @@ def test_the_budget_counts_surcharges() -> None:
         == 25
     )
     nothing = cheapest(
-        [Choice((claim(),))], within(ways, overhead=overhead, budget=Fraction("24.99")), seconds=60
+        [Choice((claim(),))],
+        within(ways, overhead=overhead, budget=Fraction("24.99")),
+        deadline=Deadline(60),
     )
     assert nothing == NothingFound(proved=True)
 
@@ -187,10 +189,10 @@ def test_ties_go_to_fewer_variables_then_to_smaller_names() -> None:
     )
     free = {name: {"w": Way()} for name in "abcd"}
     answer = solved((claim(diagram=diagram),), within=within(free))
-    assert [name for name, _ in answer.measure] == ["x", "y", "d"]
+    assert [name for name, _ in answer.bill.ways] == ["x", "y", "d"]
     del free["d"]
     answer = solved((claim(diagram=diagram),), within=within(free))
-    assert [name for name, _ in answer.measure] == ["x", "y", "a", "c"]
+    assert [name for name, _ in answer.bill.ways] == ["x", "y", "a", "c"]
 
 
 def test_of_equal_ways_the_better_reading_is_taken() -> None:
@@ -200,7 +202,7 @@ def test_of_equal_ways_the_better_reading_is_taken() -> None:
             "b": price(1, reliability=Fraction("0.9")),
         }
     }
-    assert dict(solved((claim(),), within=within(ways)).measure)["c"] == "b"
+    assert dict(solved((claim(),), within=within(ways)).bill.ways)["c"] == "b"
 
 
 def test_the_program_chooses_the_route() -> None:
@@ -234,19 +236,19 @@ def test_two_effects_share_their_purchases_in_one_program() -> None:
         ("c",),
         ("c", "e"),
     ]
-    assert [name for name, _ in both.measure] == ["x", "y", "v", "c", "e"]
+    assert [name for name, _ in both.bill.ways] == ["x", "y", "v", "c", "e"]
 
 
 def test_amounts_too_large_to_count_are_refused() -> None:
     ways = {"c": {"w": Way(setup=Fraction(10) ** 15, per_unit=Fraction("0.0001"))}}
     with pytest.raises(Overflow, match=r"2\^60 times 0\.0001"):
-        cheapest([Choice((claim(),))], within(ways), seconds=60)
+        cheapest([Choice((claim(),))], within(ways), deadline=Deadline(60))
 
 
 def test_a_search_without_time_says_so() -> None:
-    answer = cheapest([Choice((claim(),))], within({"c": {"w": price(1)}}), seconds=0)
-    if isinstance(answer, Answer):
-        assert answer.lower_bound <= answer.bill.total
+    answer = cheapest([Choice((claim(),))], within({"c": {"w": price(1)}}), deadline=Deadline(0))
+    assert isinstance(answer, Answer), "a plain plan takes no search"
+    assert answer.lower_bound <= answer.bill.total == 10
 
 
 def test_no_answer_is_lost_before_the_search() -> None:

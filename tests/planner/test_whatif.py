@@ -91,7 +91,7 @@ def test_records_and_routes_can_be_set(study: Study) -> None:
         (lambda s: whatif.without(s, "twice"), "--without: 'twice' is more than one thing."),
         (lambda s: whatif.held(s, "c"), "--held: 'c' is nothing that can be bought."),
         (lambda s: whatif.with_records(s, 0), "--records: is 0."),
-        (lambda s: whatif.with_routes(s, ["road"]), "--route: leaves no route: road."),
+        (lambda s: whatif.with_routes(s, ["road"]), "--route: 'road' is no route that the study allows."),
     ],
 )  # fmt: skip
 def test_what_cannot_be_is_refused(

@@ -10,9 +10,9 @@ import yaml
 from costs.prices import PriceList, Terms, Way
 from planner.claims import Claim, Roles
 from planner.diagram import Diagram
-from planner.planning import cheapest
 from planner.program import Choice, NothingFound, Within
 from planner.routes import ROUTES
+from planner.search import Deadline, cheapest
 from tests.conftest import ROOT
 
 EXAMPLES: list[dict[str, Any]] = yaml.safe_load(
@@ -121,7 +121,7 @@ def test_the_program_finds_the_known_price(example: dict[str, Any]) -> None:
     within = Within(prices=PriceList(ways=ways, components={}), terms=Terms(records=1))
     for route, known in example["cheapest"].items():
         claim = Claim.of(route, diagram_of(example), "t", "y")
-        answer = cheapest([Choice((claim,))], within, seconds=60)
+        answer = cheapest([Choice((claim,))], within, deadline=Deadline(60))
         found = None if isinstance(answer, NothingFound) else answer.bill.total
         assert found == known, route
         assert answer.proved

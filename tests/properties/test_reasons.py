@@ -14,8 +14,11 @@ import networkx as nx
 import pytest
 
 from planner import read_study, recommend
+from planner.claims import Claim
+from planner.diagram import Diagram
 from planner.findings import Reason
 from planner.plan import Plan, RouteAnswer
+from planner.routes.instrument.criterion import nearest
 from planner.study import HIDDEN
 from tests.enumeration import Criteria
 from tests.properties.test_separation import path_is_open
@@ -212,14 +215,28 @@ class Checker:
                 assert (path[0], path[-1]) == ("x", z)
             case "reaches_outcome":
                 assert is_there(reach, path)
-                assert path_is_open(reach, path, held)
                 assert (path[0], path[-1]) == (z, "y")
+                assert path_is_open(reach, path, self.nearest(z))
+                assert not nx.is_d_separator(reach, {z}, {"y"}, held)
             case "no_link":
                 assert nx.is_d_separator(graph, {z}, {"x"}, self.selected)
             case "link_cut":
                 assert path_is_open(graph, path, self.selected)
-                assert nx.is_d_separator(reach, {z}, {"y"}, held)
-                assert nx.is_d_separator(graph, {z}, {"x"}, held)
+                assert nx.is_d_separator(reach, {z}, {"y"}, self.nearest(z))
+                assert nx.is_d_separator(graph, {z}, {"x"}, self.nearest(z))
+
+    def nearest(self, z: str) -> set[str]:
+        """The covariates with which a candidate was tried, and S."""
+        claim = Claim.of(
+            "instrument",
+            Diagram.of({n: list(self.criteria.graph.predecessors(n)) for n in self.criteria.graph}),
+            "x",
+            "y",
+            self.selected,
+        )
+        names = claim.diagram
+        before = claim.before(names.nodes(self.measurable))
+        return set(names.named(nearest(claim, before, names.numbers[z]))) | self.selected
 
     def open_door(self, mediator: str, door: tuple[str, ...], before: set[str]) -> None:
         """The back door of a mediator is open with everything held that can be."""
@@ -270,5 +287,6 @@ def test_every_reason_is_true(
         "left out: unlinked", "left out: shielded", "left out: carried", "left out: selected",
         "impossible: back_door_open", "impossible: no_instrument", "impossible: unmediated",
         "no instrument: comes_after", "no instrument: reaches_outcome", "no instrument: no_link",
+        "no instrument: link_cut",
     ):  # fmt: skip
         assert counts[kind] > 0, kind

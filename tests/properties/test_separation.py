@@ -60,8 +60,6 @@ def test_no_shorter_path_is_open(seed: int) -> None:
             if path_is_open(graph, tuple(path), set(given))
         ]
         assert (len(found) if found else 0) == min(map(len, open_ones), default=0)
-        for path in map(tuple, nx.all_simple_paths(skeleton, a, b)):
-            assert diagram.is_open(path, given) == path_is_open(graph, path, set(given))
 
 
 @pytest.mark.parametrize("seed", range(20))

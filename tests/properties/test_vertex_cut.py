@@ -14,8 +14,8 @@ import pytest
 from costs.prices import PriceList, Terms, Way
 from planner.claims import Claim
 from planner.diagram import Diagram
-from planner.planning import cheapest
 from planner.program import Choice, NothingFound, Within
+from planner.search import Deadline, cheapest
 
 SIZE = 14
 
@@ -70,7 +70,7 @@ def test_the_program_finds_the_minimum_cut(capsys: pytest.CaptureFixture[str]) -
         ways = {n: {"standard": Way(per_unit=Fraction(p))} for n, p in priced.items()}
         within = Within(prices=PriceList(ways=ways, components={}), terms=Terms(records=1))
         claim = Claim.of("conditioning", diagram, "x", "y")
-        answer = cheapest([Choice((claim,))], within, seconds=60)
+        answer = cheapest([Choice((claim,))], within, deadline=Deadline(60))
         value = inf if isinstance(answer, NothingFound) else answer.bill.total
         assert value == cut_value(causes, priced), seed
         values.append(value)

@@ -16,10 +16,11 @@ graphs, Artificial Intelligence 270, for the form with G_nc. Both from memory.
 
 from collections.abc import Iterator
 
-from planner.claims import Claim, Finding, Roles, Separation
+from planner.claims import Claim, Roles, Separation
 from planner.diagram import Nodes
+from planner.findings import Finding
 
-__all__ = ["breaches", "candidates", "separations"]
+__all__ = ["breaches", "candidates", "opening", "separations"]
 
 
 def candidates(claim: Claim, measurable: Nodes) -> Roles:
@@ -35,7 +36,6 @@ def separations(claim: Claim, roles: Roles) -> tuple[Separation, ...]:
     """Return what the covariates have to close: (2)."""
     return (
         Separation(
-            name="back doors",
             diagram=claim.noncausal,
             starts=frozenset((claim.treatment,)),
             ends=frozenset((claim.outcome,)),
@@ -54,3 +54,9 @@ def breaches(claim: Claim, roles: Roles) -> Iterator[Finding]:
     (back_doors,) = separations(claim, roles)
     if not back_doors.given & claim.ends and (open_path := back_doors.breach()):
         yield Finding("back_door_open", open_path)
+
+
+def opening(claim: Claim, measurable: Nodes) -> Roles | None:
+    """Return roles that open the route: all candidates do, if any set does."""
+    everything = candidates(claim, measurable)
+    return None if any(breaches(claim, everything)) else everything

@@ -1,7 +1,10 @@
 """Why conditioning needs each variable, does not need the others, or cannot be taken."""
 
-from planner.claims import Claim, Finding, Roles
+from collections.abc import Iterable
+
+from planner.claims import Claim, Roles
 from planner.diagram import Nodes
+from planner.findings import Finding
 from planner.reasons import after_treatment, opened_by, shielded
 from planner.routes.conditioning.criterion import breaches, candidates, separations
 
@@ -19,29 +22,24 @@ def needed(claim: Claim, roles: Roles, node: int) -> Finding:
     return Finding("closes", breach.path, (node,))
 
 
-def left_out(claim: Claim, roles: Roles, node: int) -> Finding:
-    """Say why a variable is not held: it must not be, or nothing would be gained."""
-    if node in claim.forbidden:
-        return after_treatment(claim, node)
+def left_out(claim: Claim, roles: Roles, nodes: Iterable[int]) -> dict[int, Finding]:
+    """Say why each variable is not held: it must not be, or nothing would be gained."""
     established = separations(claim, roles)
-    return opened_by(established, node) or shielded(established, roles, node)
+    return {
+        node: after_treatment(claim, node)
+        if node in claim.forbidden
+        else opened_by(established, node) or shielded(established, roles, node)
+        for node in nodes
+    }
 
 
 def hindrances(claim: Claim, measurable: Nodes) -> tuple[Finding, ...]:
-    """Return the back-door path that nobody can close.
+    """Return a back-door path that is open even with everything held that can be.
 
-    If any set will do, so will everything that can be measured among the candidates; a path that is
-    open even then settles it.
+    Colliders on it are named: the path is open because of what is held, and another one would be
+    if that were not.
     """
-    everything = candidates(claim, measurable)
-    (back_doors,) = separations(claim, everything)
+    (back_doors,) = separations(claim, candidates(claim, measurable))
     path = back_doors.breach()
-    if path is None:
-        return ()
-    parents = claim.diagram.parents
-    colliders = (
-        node
-        for before, node, behind in zip(path, path[1:], path[2:], strict=False)
-        if before in parents[node] and behind in parents[node]
-    )
-    return (Finding("back_door_open", path, tuple(colliders)),)
+    assert path, "a route without an opening has an open back door"
+    return (Finding("back_door_open", path, back_doors.diagram.colliders(path)),)

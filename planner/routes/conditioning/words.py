@@ -16,11 +16,10 @@ WORDS = Words(
     ),
     sentences={
         "closes": "left out, {path} would pass for an effect of {treatment}",
-        "back_doors_closed": "adjusting for {all} stops every path that could pass for an effect.",
-        "back_doors_closed:none": "no path could pass for an effect: nothing to adjust for.",
-        "back_door_open": "the path {path} passes for an effect, whatever is measured.",
-        "back_door_open:some": "some path passes for an effect, whatever is measured; if all that"
-        " can be is adjusted for, it is {path}, let through because {all} is adjusted for, or what"
-        " follows from it.",
+        "back_doors_closed": "Adjusting for {all} stops every path that could pass for an effect.",
+        "back_doors_closed:none": "No path could pass for an effect: nothing to adjust for.",
+        "back_door_open": "The path {path} passes for an effect, whatever is measured.",
+        "back_door_open:some": "Some path passes for an effect, whatever is measured: with all that"
+        " can be adjusted for, {path}, open because {all} is adjusted for, or a result of it.",
     },
 )

@@ -20,10 +20,11 @@ Biometrika 111, for total effects (from memory).
 
 from collections.abc import Iterator
 
-from planner.claims import Claim, Finding, Roles, Separation
+from planner.claims import Claim, Roles, Separation
 from planner.diagram import Nodes
+from planner.findings import Finding
 
-__all__ = ["breaches", "candidates", "link", "separations"]
+__all__ = ["breaches", "candidates", "link", "nearest", "opening", "separations"]
 
 
 def candidates(claim: Claim, measurable: Nodes) -> Roles:
@@ -40,7 +41,6 @@ def separations(claim: Claim, roles: Roles) -> tuple[Separation, ...]:
     """Return what the covariates have to close: (4)."""
     return (
         Separation(
-            name="exclusion",
             diagram=claim.noncausal,
             starts=roles.instruments,
             ends=frozenset((claim.outcome,)),
@@ -52,7 +52,6 @@ def separations(claim: Claim, roles: Roles) -> tuple[Separation, ...]:
 def link(claim: Claim, roles: Roles) -> Separation:
     """Return what the covariates must leave open: (3)."""
     return Separation(
-        name="link",
         diagram=claim.diagram,
         starts=roles.instruments,
         ends=frozenset((claim.treatment,)),
@@ -82,3 +81,38 @@ def breaches(claim: Claim, roles: Roles) -> Iterator[Finding]:
     (exclusion,) = separations(claim, roles)
     if open_path := exclusion.breach():
         yield Finding("reaches_outcome", open_path)
+
+
+def opening(claim: Claim, measurable: Nodes) -> Roles | None:
+    """Return roles that open the route: a candidate with its nearest covariates, if any will do."""
+    before = claim.before(measurable)
+    for node in claim.diagram.by_name(before):
+        roles = Roles(instruments=frozenset((node,)), covariates=nearest(claim, before, node))
+        if not any(breaches(claim, roles)):
+            return roles
+    return None
+
+
+def nearest(claim: Claim, before: Nodes, node: int) -> Nodes:
+    """Return the covariates nearest to the outcome on all ways to a candidate.
+
+    In the moral graph of G_nc on An({z, Y} ∪ S), the covariates that a walk from Y meets first. If
+    any covariates among the ancestors close all paths between z and Y, these do; and if the link to
+    the treatment outlasts any that do, it outlasts these. Without an ancestral instrument there is
+    none at all (van der Zander, Textor & Liśkiewicz 2015, Efficiently finding conditional
+    instruments for causal inference, IJCAI; from memory, and compared with trying all sets).
+    """
+    graph = claim.noncausal
+    ancestral = graph.ancestors({node, claim.outcome} | claim.selected)
+    neighbours: dict[int, set[int]] = {each: set() for each in ancestral}
+    for one, other in graph.moral_edges(sorted(ancestral)):
+        neighbours[one].add(other)
+        neighbours[other].add(one)
+    usable = (before & ancestral) - {node}
+    met, stack = {claim.outcome}, [claim.outcome]
+    while stack:
+        for each in neighbours[stack.pop()] - met - claim.selected:
+            met.add(each)
+            if each not in usable:
+                stack.append(each)
+    return frozenset(met & usable)

@@ -1,9 +1,13 @@
 """Why an instrument needs each variable, does not need the others, or cannot be had."""
 
-from planner.claims import Claim, Finding, Roles
+from collections.abc import Iterable
+from dataclasses import replace
+
+from planner.claims import Claim, Roles
 from planner.diagram import Nodes
+from planner.findings import Finding
 from planner.reasons import after_treatment, opened_by, shielded
-from planner.routes.instrument.criterion import breaches, candidates, link, separations
+from planner.routes.instrument.criterion import breaches, link, nearest, separations
 
 __all__ = ["hindrances", "left_out", "needed", "opened"]
 
@@ -30,33 +34,40 @@ def needed(claim: Claim, roles: Roles, node: int) -> Finding:
     return Finding("closes", breach.path, (node,))
 
 
-def left_out(claim: Claim, roles: Roles, node: int) -> Finding:
-    """Say why a variable is not held: it must not be, or nothing would be gained."""
-    if node in claim.after:
-        return after_treatment(claim, node)
+def left_out(claim: Claim, roles: Roles, nodes: Iterable[int]) -> dict[int, Finding]:
+    """Say why each variable is not held: it must not be, or nothing would be gained."""
     established = separations(claim, roles)
-    if opens := opened_by(established, node):
-        return opens
-    if link(claim, roles.holding(node)).breach() is None:
-        path = link(claim, roles).breach()
-        assert path, "the instrument is linked to the treatment"
-        return Finding("cuts_link", path, (node,))
-    return shielded(established, roles, node)
+    return {
+        node: after_treatment(claim, node)
+        if node in claim.after
+        else opened_by(established, node)
+        or undoing(claim, roles, node)
+        or shielded(established, roles, node)
+        for node in nodes
+    }
+
+
+def undoing(claim: Claim, roles: Roles, node: int) -> Finding | None:
+    """Say which link of the instrument holding one node more would cut, if it would cut all."""
+    if link(claim, roles.adjusting(node)).breach() is not None:
+        return None
+    path = link(claim, roles).breach()
+    assert path, "the instrument is linked to the treatment"
+    return Finding("cuts_link", path, (node,))
 
 
 def hindrances(claim: Claim, measurable: Nodes) -> tuple[Finding, ...]:
     """Return the nearest miss, then for each candidate the first condition that it fails.
 
-    Conditions in order: it comes before the treatment; some covariates close its paths to the
-    outcome (if any do, so do all that can be measured among the ancestors of the two); it is linked
-    to the treatment at all; the link survives those covariates.
+    Conditions in order: it comes before the treatment; it is linked to it; some covariates close
+    its paths to the outcome (if any do, so do the nearest ones); the link outlasts those.
     """
-    people = measurable - claim.ends - claim.selected
-    if not people:
+    others = measurable - claim.ends - claim.selected
+    if not others:
         return (Finding("no_candidate"),)
-    found = [hindrance(claim, measurable, node) for node in claim.diagram.by_name(people)]
+    found = [hindrance(claim, measurable, node) for node in claim.diagram.by_name(others)]
     closest = min(found, key=lambda each: CLOSEST_FIRST.index(each.kind))
-    return (Finding("no_instrument", closest.path, closest.nodes), *found)
+    return (Finding("no_instrument", closest.path, closest.nodes[:1]), *found)
 
 
 def hindrance(claim: Claim, measurable: Nodes, node: int) -> Finding:
@@ -65,12 +76,12 @@ def hindrance(claim: Claim, measurable: Nodes, node: int) -> Finding:
         path = claim.diagram.directed_path(claim.treatment, {node})
         assert path, "the node follows from the treatment"
         return Finding("comes_after", path, (node,))
-    ancestors = claim.noncausal.ancestors({node, claim.outcome} | claim.selected)
-    held = (candidates(claim, measurable).covariates & ancestors) - {node}
-    roles = Roles(instruments=frozenset((node,)), covariates=held)
-    (exclusion,) = separations(claim, roles)
+    alone = Roles(instruments=frozenset((node,)))
+    linked = link(claim, alone).breach()
+    if linked is None:
+        return Finding("no_link", (), (node,))
+    covariates = nearest(claim, claim.before(measurable), node)
+    (exclusion,) = separations(claim, replace(alone, covariates=covariates))
     if path := exclusion.breach():
-        return Finding("reaches_outcome", path, (node,))
-    if path := link(claim, Roles(instruments=roles.instruments)).breach():
-        return Finding("link_cut", path, (node,))
-    return Finding("no_link", (), (node,))
+        return Finding("reaches_outcome", path, (node, *exclusion.diagram.colliders(path)))
+    return Finding("link_cut", linked, (node, *claim.diagram.by_name(covariates)))

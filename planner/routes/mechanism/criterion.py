@@ -19,10 +19,11 @@ Marealle & Tchetgen Tchetgen (2020), Robust inference on population indirect cau
 
 from collections.abc import Iterator
 
-from planner.claims import Claim, Finding, Roles, Separation
-from planner.diagram import Nodes
+from planner.claims import Claim, Roles, Separation
+from planner.diagram import Nodes, Path
+from planner.findings import Finding
 
-__all__ = ["breaches", "candidates", "separations"]
+__all__ = ["back_door", "breaches", "candidates", "opening", "separations", "shrunk"]
 
 
 def candidates(claim: Claim, measurable: Nodes) -> Roles:
@@ -43,14 +44,12 @@ def separations(claim: Claim, roles: Roles) -> tuple[Separation, ...]:
     treatment = frozenset((claim.treatment,))
     return (
         Separation(
-            name="back doors of the treatment",
             diagram=claim.diagram.without_arrows_out_of(treatment),
             starts=treatment,
             ends=roles.mediators,
             given=given,
         ),
         Separation(
-            name="back doors of the mediators",
             diagram=claim.diagram.without_arrows_out_of(roles.mediators),
             starts=roles.mediators,
             ends=frozenset((claim.outcome,)),
@@ -80,3 +79,34 @@ def breaches(claim: Claim, roles: Roles) -> Iterator[Finding]:
         yield Finding("treatment_side_open", open_path)
     if open_path := behind.breach():
         yield Finding("outcome_side_open", open_path)
+
+
+def opening(claim: Claim, measurable: Nodes) -> Roles | None:
+    """Return roles that open the route: the mediators that nothing stands against, if they do."""
+    able = candidates(claim, measurable)
+    roles = Roles(covariates=able.covariates, mediators=shrunk(claim, able))
+    return None if any(breaches(claim, roles)) else roles
+
+
+def shrunk(claim: Claim, able: Roles) -> Nodes:
+    """Return the largest set of mediators without an open back door, all covariates held.
+
+    Mediators are given up while a back door of theirs stays open. A smaller set only puts arrows
+    back, so that a door once open stays so, and what is left holds every set that will do (after
+    Jeong, Tian & Bareinboim 2022, Finding and listing front-door adjustment sets, NeurIPS).
+    """
+    left = able.mediators
+    while given_up := {node for node in left if back_door(claim, able, left, node)}:
+        left -= given_up
+    return left
+
+
+def back_door(claim: Claim, able: Roles, mediators: Nodes, node: int) -> Path | None:
+    """Return a shortest open path from a mediator to the treatment or the outcome, if any."""
+    roles = Roles(covariates=able.covariates, mediators=mediators)
+    before, behind = separations(claim, roles)
+    paths = (
+        before.diagram.open_path(before.starts, {node}, before.given),
+        behind.diagram.open_path({node}, behind.ends, behind.given),
+    )
+    return min(filter(None, paths), key=len, default=None)

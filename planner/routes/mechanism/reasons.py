@@ -1,9 +1,18 @@
 """Why the mechanism needs each variable, does not need the others, or cannot be taken."""
 
-from planner.claims import Claim, Finding, Roles
-from planner.diagram import Nodes, Path
+from collections.abc import Iterable
+
+from planner.claims import Claim, Roles
+from planner.diagram import Nodes
+from planner.findings import Finding
 from planner.reasons import after_treatment, opened_by, shielded, through
-from planner.routes.mechanism.criterion import breaches, candidates, separations
+from planner.routes.mechanism.criterion import (
+    back_door,
+    breaches,
+    candidates,
+    separations,
+    shrunk,
+)
 
 __all__ = ["hindrances", "left_out", "needed", "opened"]
 
@@ -21,51 +30,41 @@ def needed(claim: Claim, roles: Roles, node: int) -> Finding:
     return Finding(kind, breach.path, (node,))
 
 
-def left_out(claim: Claim, roles: Roles, node: int) -> Finding:
-    """Say why a variable is not measured: it must not be held, or nothing would be gained."""
-    if node in claim.causal and node != claim.outcome:
-        path = through(claim, node)
-        return Finding("carried", path, (node, *(each for each in path if each in roles.mediators)))
-    if node in claim.after:
-        return after_treatment(claim, node)
+def left_out(claim: Claim, roles: Roles, nodes: Iterable[int]) -> dict[int, Finding]:
+    """Say why each variable is not measured: it must not be held, or nothing would be gained."""
     established = separations(claim, roles)
-    return opened_by(established, node) or shielded(established, roles, node)
+    return {
+        node: carried(claim, roles, node)
+        if node in claim.causal
+        else after_treatment(claim, node)
+        if node in claim.after
+        else opened_by(established, node) or shielded(established, roles, node)
+        for node in nodes
+    }
+
+
+def carried(claim: Claim, roles: Roles, node: int) -> Finding:
+    """Say which mediators already carry a path through another one."""
+    path = through(claim, node)
+    return Finding("carried", path, (node, *(each for each in path if each in roles.mediators)))
 
 
 def hindrances(claim: Claim, measurable: Nodes) -> tuple[Finding, ...]:
     """Return a directed path that mediators cannot carry, and the back doors that see to it.
 
-    With everything held that can be, mediators are given up one by one while a back door of theirs
-    stays open; what is left is the largest set without one (a smaller set only puts arrows back).
-    If it misses a directed path, that path is the first finding, and the back door of each
-    measurable mediator on it follows.
+    The path misses the largest set of mediators without an open back door; what could be measured
+    on it has one, with everything held that can be, and it follows.
     """
     able = candidates(claim, measurable)
-    left, open_doors = able.mediators, dict[int, Finding]()
-    while left:
-        roles = Roles(mediators=left, covariates=able.covariates)
-        doors = {node: back_door(claim, roles, node) for node in left}
-        given_up = {
-            node: Finding("mediator_back_door", path, (node,))
-            for node, path in doors.items()
-            if path
-        }
-        if not given_up:
-            break
-        open_doors |= given_up
-        left -= given_up.keys()
+    left = shrunk(claim, able)
     path = claim.diagram.directed_path(claim.treatment, {claim.outcome}, left)
-    if path is None:
-        return ()
-    on_path = [node for node in path if node in open_doors]
-    return (Finding("unmediated", path, tuple(on_path)), *(open_doors[node] for node in on_path))
+    assert path, "a route without an opening has an unmediated path"
+    doors = [door(claim, able, left, node) for node in path if node in able.mediators]
+    return (Finding("unmediated", path, tuple(each.nodes[0] for each in doors)), *doors)
 
 
-def back_door(claim: Claim, roles: Roles, node: int) -> Path | None:
-    """Return a shortest open path from a mediator to the treatment or the outcome."""
-    before, behind = separations(claim, roles)
-    paths = (
-        before.diagram.open_path(before.starts, {node}, before.given),
-        behind.diagram.open_path({node}, behind.ends, behind.given),
-    )
-    return min(filter(None, paths), key=len, default=None)
+def door(claim: Claim, able: Roles, left: Nodes, node: int) -> Finding:
+    """Return the open back door of a mediator that was given up, and colliders on it."""
+    path = back_door(claim, able, left | {node}, node)
+    assert path, "a mediator is given up for an open back door"
+    return Finding("mediator_back_door", path, (node, *claim.diagram.colliders(path)))

@@ -18,12 +18,15 @@ WORDS = Words(
     ),
     sentences={
         "closes": "left out, {path} would pass for part of the mechanism",
-        "mediated": "the whole effect runs through {all}, as in {path}, and no path could pass for"
-        " part of it.",
+        "mediated": "By the diagram the whole effect runs through {all}, as in {path}; with the"
+        " covariates adjusted for, no other open path passes for part of it.",
         "carried": "{others} already carries {path}; adjusting for it would take that away",
-        "unmediated": "nothing on the directed path {path} can be measured.",
-        "unmediated:some": "no set of mediators will do: on the directed path {path}, something"
+        "unmediated": "Nothing on the directed path {path} can be measured.",
+        "unmediated:some": "No set of mediators will do: on the directed path {path}, something"
         " else passes for the work of {all}.",
         "mediator_back_door": "{path} passes for the work of {who}, whatever is measured.",
+        "mediator_back_door:several": "Some path passes for the work of {who}, whatever is"
+        " measured: with all that can be adjusted for, {path}, open because {others} is adjusted"
+        " for, or a result of it.",
     },
 )
