@@ -6,7 +6,7 @@ from datetime import date
 
 from costs.bill import needed_by
 from costs.located import listed, shortened
-from planner.study import Study
+from planner.study import Study, shown_time
 
 __all__ = ["Summary", "not_yet_applied", "out_of_date", "remarks", "summary_of"]
 
@@ -59,7 +59,7 @@ def summary_of(study: Study, today: date) -> Summary:
         components=len(study.prices.components),
         free_ways=sum(not (way.per_unit or way.setup or way.batch) for way in ways),
         timed=len(whens),
-        times=tuple(study.waves) or tuple(f"{float(when):g}" for when in sorted(set(whens))),
+        times=tuple(shown_time(when, study.waves) for when in sorted(set(whens))),
         remarks=tuple(remarks(study, today)),
     )
 
@@ -68,6 +68,7 @@ def remarks(study: Study, today: date) -> Iterator[str]:
     """Return what is worth a second look."""
     yield from not_yet_applied(study)
     yield from out_of_date(study, today)
+    yield from left_unread(study)
     yield from no_way_to_the_outcome(study)
     yield from outside_the_diagram(study)
     yield from beside_the_losses(study)
@@ -94,6 +95,16 @@ def out_of_date(study: Study, today: date) -> Iterator[str]:
     for source in study.price_sources:
         if source.valid_until is not None and source.valid_until < today:
             yield f"The prices in {source.path} were valid until {source.valid_until}."
+
+
+def left_unread(study: Study) -> Iterator[str]:
+    """Say which sheets of a price list were passed over."""
+    for source in study.price_sources:
+        if source.unread:
+            yield (
+                f"{source.path}: {listed(source.unread)} begins with no row of column names, and"
+                " was not read."
+            )
 
 
 def no_way_to_the_outcome(study: Study) -> Iterator[str]:
@@ -130,15 +141,15 @@ def outside_the_diagram(study: Study) -> Iterator[str]:
 def beside_the_losses(study: Study) -> Iterator[str]:
     """Say which ways are paid for units that an always bought component loses."""
     prices = study.prices
+    needs = {
+        f"{variable}.{way}": needed_by(purchase.needs, prices)
+        for variable, named in prices.ways.items()
+        for way, purchase in named.items()
+    }
     for name, component in prices.components.items():
         if not component.always or component.yields == 1:
             continue
-        beside = [
-            f"{variable}.{way}"
-            for variable, named in prices.ways.items()
-            for way, purchase in named.items()
-            if name not in needed_by(purchase.needs, prices)
-        ]
+        beside = [way for way, needed in needs.items() if name not in needed]
         if beside:
             verb = "does" if len(beside) == 1 else "do"
             yield (
@@ -182,4 +193,5 @@ def resting_on_default(study: Study) -> Iterator[str]:
         strengths = [s for each in study.variables.values() for s in each.causes.values()]
         resting = sum(strength is None for strength in strengths)
         resting += 2 * sum(hidden.strength is None for hidden in study.hidden_causes)
-        yield f"{resting} arrows rest on the default strength."
+        verb = "arrow rests" if resting == 1 else "arrows rest"
+        yield f"{resting} {verb} on the default strength."

@@ -9,13 +9,15 @@ import sys
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from datetime import UTC, datetime
+from functools import partial
 from importlib import resources
+from io import TextIOWrapper
 from pathlib import Path
 from typing import Annotated
 
 import typer
 
-from costs.faults import FaultyInput
+from costs.faults import Fault, Faults, FaultyInput, Spot
 from planner import whatif
 from planner.checking import Summary, not_yet_applied, out_of_date, summary_of
 from planner.reading import read_study
@@ -64,7 +66,7 @@ def new(
     ),
 ) -> None:
     """Write a commented study file to fill in; never over another file."""
-    refuse_overwriting(path, "new")
+    refuse_overwriting(path, "new", "Name another file; an existing one is never replaced.")
     template = resources.files("planner").joinpath("new_study.yaml").read_bytes()
     write_whole(path, template, "new")
     say(f"{path} is written. Next: measurewise check {path}")
@@ -112,9 +114,10 @@ def recommend(
     seconds: Annotated[float, typer.Option(min=0.1, help="Time for each route.")] = 60.0,
 ) -> None:
     """Find the cheapest plan, prove it, and say why each item is in it or not."""
+    original = read_study(study, prices=prices)
     if workbook is not None:
-        refuse_overwriting(workbook, "--workbook", force=force)
-    changed = what_if(read_study(study, prices=prices), route, records, without, held)
+        refuse_workbook(workbook, original, force=force)
+    changed = what_if(original, route, records, without, held)
     for remark in (*not_yet_applied(changed), *out_of_date(changed, datetime.now(tz=UTC).date())):
         say(f"note: {remark}")
     # Imported here, so that help and check do without the solver and the layout of reports.
@@ -143,6 +146,17 @@ def recommend(
         raise typer.Exit(NO_PLAN)
 
 
+def refuse_workbook(path: Path, study: Study, *, force: bool) -> None:
+    """Refuse a place for the workbook where none can, or should, be written."""
+    inputs = [study.path, *(source.path for source in study.price_sources)]
+    mend = "Name another file, or add --force to replace an ordinary one."
+    refuse_overwriting(path, "--workbook", mend, force=force, inputs=inputs)
+    if path.suffix.lower() != ".xlsx":
+        wrong, mend = "is no name of a workbook.", "Let it end in .xlsx."
+        fault = Fault(file=str(path), spot=Spot(1), key="--workbook", wrong=wrong, mend=mend)
+        raise FaultyInput([fault])
+
+
 def what_if(
     study: Study,
     routes: Sequence[str] | None,
@@ -150,15 +164,22 @@ def what_if(
     without: Sequence[str] | None,
     held: Sequence[str] | None,
 ) -> Study:
-    """Return the study with what the options ask for."""
+    """Return the study with what the options ask for; all that cannot be is told at once."""
+    changes: list[Callable[[Study], Study]] = []
     if routes:
-        study = whatif.with_routes(study, routes)
+        changes.append(lambda study: whatif.with_routes(study, routes))
     if records is not None:
-        study = whatif.with_records(study, records)
-    for name in without or ():
-        study = whatif.without(study, name)
-    for name in held or ():
-        study = whatif.held(study, name)
+        changes.append(lambda study: whatif.with_records(study, records))
+    changes += [partial(whatif.without, name=name) for name in without or ()]
+    changes += [partial(whatif.held, name=name) for name in held or ()]
+    faults = Faults()
+    for change in changes:
+        try:
+            study = change(study)
+        except FaultyInput as faulty:
+            for fault in faulty.faults:
+                faults.add(fault)
+    faults.raise_any()
     return study
 
 
@@ -227,8 +248,15 @@ def say(text: str) -> None:
 
 def main(arguments: Sequence[str] | None = None) -> None:
     """Run the command line; what is at fault in the input is printed whole."""
+    for stream in (sys.stdout, sys.stderr):
+        # Arrows and names need it; where a console knows less, it shows something else for them.
+        if isinstance(stream, TextIOWrapper) and not stream.encoding.lower().startswith("utf"):
+            stream.reconfigure(encoding="utf-8")
     try:
         app(args=None if arguments is None else list(arguments))
     except FaultyInput as faulty:
         say(str(faulty))
+        sys.exit(AT_FAULT)
+    except OSError as error:
+        say(f"The report cannot be written: {error.strerror}.")
         sys.exit(AT_FAULT)

@@ -3,6 +3,7 @@
 from collections.abc import Mapping
 from dataclasses import dataclass
 from fractions import Fraction
+from typing import Literal
 
 from costs.bill import Bill
 from costs.money import plain_number
@@ -19,14 +20,13 @@ __all__ = [
     "Recommendation",
     "Role",
     "RouteAnswer",
-    "Status",
+    "RouteStatus",
+    "StudyStatus",
 ]
 
-Status = str
-"""Of a route ``feasible``, ``impossible`` or ``over_limits``; of a study ``recommended``,
-``impossible``, ``over_limits`` or ``no_effect``."""
-Role = str
-"""``treatment``, ``outcome``, ``covariate``, ``instrument`` or ``mediator``."""
+StudyStatus = Literal["recommended", "impossible", "over_limits", "no_effect"]
+RouteStatus = Literal["feasible", "impossible", "over_limits"]
+Role = Literal["covariate", "instrument", "mediator"]
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -38,7 +38,11 @@ class Buy:
     bill: Bill
     lower_bound: Fraction
     """Nothing that serves costs less."""
-    proved: bool
+
+    @property
+    def proved(self) -> bool:
+        """Whether nothing cheaper would do."""
+        return self.lower_bound == self.bill.total
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -58,14 +62,12 @@ class Plan:
 
     def role(self, variable: str) -> Role | None:
         """Return the part that a variable plays besides treatment and outcome; None if none."""
-        for role, names in (
-            ("covariate", self.covariates),
-            ("instrument", self.instruments),
-            ("mediator", self.mediators),
-        ):
-            if variable in names:
-                return role
-        return None
+        parts: dict[Role, tuple[str, ...]] = {
+            "covariate": self.covariates,
+            "instrument": self.instruments,
+            "mediator": self.mediators,
+        }
+        return next((role for role, names in parts.items() if variable in names), None)
 
 
 @dataclass(frozen=True, slots=True)
@@ -76,6 +78,8 @@ class Exceeded:
     """``budget``, ``frame_size``, ``least_reliability`` or ``burdens.NAME``."""
     allowed: Fraction
     needed: Fraction
+    proved: bool = True
+    """Whether no plan without this limit costs less than the one that needs so much."""
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -83,7 +87,7 @@ class RouteAnswer:
     """What can be said of one route."""
 
     route: str
-    status: Status
+    status: RouteStatus
     reason: Reason
     plan: Plan | None = None
     beyond: Plan | None = None
@@ -111,7 +115,7 @@ class Recommendation:
     """The whole answer to a study."""
 
     study: Study
-    status: Status
+    status: StudyStatus
     buy: Buy | None
     effects: tuple[EffectAnswer, ...]
 
@@ -170,6 +174,7 @@ def route_values(answer: RouteAnswer, effect: Effect, study: Study) -> dict[str,
                 "limit": each.limit,
                 "allowed": plain_number(each.allowed),
                 "needed": plain_number(each.needed),
+                "proved": each.proved,
             }
             for each in answer.exceeds
         ],

@@ -18,21 +18,21 @@ SHARED = {
     "on_causal_path": "is a step by which the effect works, {path}; adjusting for it would take"
     " part of the effect away",
     "below_causal_path": "is a result of what {treatment} changes, {path}; comparing units alike in"
-    " it makes the estimate wrong",
+    " it can make the estimate wrong",
     "after_treatment": "is a result of {treatment}, {path}",
     "opens": "adjusting for it would let {path} pass for an effect, which it does not as it is",
-    "unlinked": "no path along which it could mislead leads to {others}",
+    "unlinked": "nothing connects it with {others} here, so it cannot mislead",
     "shielded": "adjusting for {others} already stops {path}",
     "selected": "has one and the same value in every row",
     # Why a whole route, or all of them, cannot be taken.
     "no_directed_path": "No directed path leads from {treatment} to {outcome}: by this diagram the"
     " effect is zero. Nine times in ten an arrow was forgotten.",
-    "selection_after_treatment": "the rows are selected by a result of {treatment}, {path}: no"
+    "selection_after_treatment": "The rows are selected by a result of {treatment}, {path}: no"
     " analysis of the selected rows alone gives the effect.",
-    "over_limits": "the route is open, but only beyond one of the limits {all}.",
-    "over_limits:one": "the route is open, but only beyond the limit {all}.",
-    "over_limits_together": "the route is open, but only beyond all of the limits {all}.",
-    "out_of_time": "no plan within the limits was found in the time given, and none was ruled out.",
+    "over_limits": "The route is open, but only beyond one of the limits {all}.",
+    "over_limits:one": "The route is open, but only beyond the limit {all}.",
+    "over_limits_together": "The route is open, but only beyond all of the limits {all}.",
+    "out_of_time": "No plan within the limits was found in the time given, and none was ruled out.",
 }
 """A sentence for each kind of finding that is no single route's own."""
 

@@ -111,7 +111,7 @@ def test_options_that_make_no_sense_are_refused(run: Callable[..., Ran]) -> None
             "--without: 'gus' is nothing that can be bought.\n    Did you mean 'gis'?",
         ),
         (("--held", "gis"), "--held: 'gis' is nothing that can be bought."),
-        (("--route", "instrument"), "--route: leaves no route: instrument.\n    The study allows"),
+        (("--route", "instrument"), "--route: 'instrument' is no route that the study allows."),
         (("--records", "0"), "--records: is 0."),
     ):
         ran = run("recommend", PERMITS, *words)

@@ -6,12 +6,19 @@ from fractions import Fraction
 
 from costs.bill import bill_for
 from planner.plan import Buy, EffectAnswer, Exceeded, Plan, Recommendation, RouteAnswer
-from planner.report.numbers import counted, money, percent, plain
+from planner.report.numbers import counted, exact, money, percent
 from planner.routes import ROUTES
 from planner.study import Effect, Study
 from planner.words import conjoined, sentence
 
-__all__ = ["answer_sentences", "beyond_limits", "cautions", "closing_notes", "price_of"]
+__all__ = [
+    "answer_sentences",
+    "beyond_limits",
+    "cautions",
+    "closing_notes",
+    "price_of",
+    "same_for_all",
+]
 
 CORRELATIONS = (Fraction(1, 2), Fraction(1, 5), Fraction(1, 10))
 """Of instrument and treatment, for which the price of a weak instrument is told."""
@@ -34,6 +41,8 @@ def answer_sentences(answer: Recommendation, effect_answer: EffectAnswer) -> Ite
         yield from next_best(study, effect, effect_answer, route)
     elif answer.status == "no_effect":
         yield sentence(effect_answer.routes[0].reason, effect)
+    elif same_for_all(effect_answer):
+        yield beyond_limits(effect_answer.routes[0], effect, study)
     else:
         yield (
             "No plan stays within the limits."
@@ -43,6 +52,15 @@ def answer_sentences(answer: Recommendation, effect_answer: EffectAnswer) -> Ite
         for each in effect_answer.routes:
             words = ROUTES[each.route].words.title
             yield f"By {words}: {beyond_limits(each, effect, study)}"
+
+
+def same_for_all(answer: EffectAnswer) -> bool:
+    """Say whether one and the same reason closes every route."""
+    reasons = {each.reason for each in answer.routes}
+    return len(reasons) == 1 and answer.routes[0].reason.kind in {
+        "no_directed_path",
+        "selection_after_treatment",
+    }
 
 
 def recommendation(study: Study, effect: Effect, buy: Buy, route: str, plan: Plan) -> str:
@@ -73,7 +91,10 @@ def proof(study: Study, buy: Buy) -> str:
     """Return how sure it is that nothing cheaper would do, and what that does not say."""
     records = counted(buy.bill.records, "record")
     if buy.proved:
-        sure = f"Proved: for {records}, by this diagram and these prices, no other plan costs less."
+        sure = (
+            f"Proved: for {records}, by this diagram and these prices, no plan by"
+            f" {the_routes(study)}."
+        )
     else:
         gap = percent(1 - buy.lower_bound / buy.bill.total)
         sure = (
@@ -83,11 +104,21 @@ def proof(study: Study, buy: Buy) -> str:
     return f"{sure} Whether {records} are enough is not worked out here."
 
 
+def the_routes(study: Study) -> str:
+    """Return by which routes no plan costs less, and which ones the study leaves out."""
+    titles = {name: route.words.title for name, route in ROUTES.items()}
+    left_out = conjoined(title for name, title in titles.items() if name not in study.routes)
+    if not left_out:
+        return "any route costs less"
+    allowed = " or ".join(titles[name] for name in study.routes)
+    return f"{allowed} costs less; the study leaves out {left_out}"
+
+
 def weak_instrument(study: Study, buy: Buy) -> str:
     """Return what a weak instrument costs, in records and in money.
 
-    Its variance is 1/ρ² times that of an adjusted comparison, ρ being the correlation of instrument
-    and treatment given the covariates, if the covariates would do for both.
+    Its variance is 1/ρ² times that of a comparison adjusted for the same covariates, ρ being the
+    correlation of instrument and treatment given these, where they would do for both.
     """
     records = buy.bill.records
     steps = []
@@ -99,9 +130,9 @@ def weak_instrument(study: Study, buy: Buy) -> str:
         steps.append(f"{more:,} records ({price}) if ρ is {float(correlation):g}")
     return (
         "BUT MIND: this is the cheapest plan for so many records, not for the same precision. An"
-        " instrument needs 1/ρ² times the records of an adjusted comparison, ρ being its"
-        f" correlation with the treatment: to say as much as {records:,} adjusted records it takes"
-        f" {conjoined(steps)}."
+        " instrument needs roughly 1/ρ² times the records of an adjusted comparison, ρ being its"
+        " correlation with the treatment (given the same covariates): to say as much as"
+        f" {records:,} adjusted records it takes about {conjoined(steps)}."
     )
 
 
@@ -124,35 +155,31 @@ def next_best(
 
 def beyond_limits(answer: RouteAnswer, effect: Effect, study: Study) -> str:
     """Return why a route is open or not; where a limit is in the way, what would be needed."""
-    if not answer.exceeds or answer.reason.kind == "out_of_time":
-        return sentence(answer.reason, effect, answer.route, study.unmeasurable)
-    together = " and " if limits_are_broken_together(answer) else "; or "
-    return f"it would take {together.join(needed(each, study) for each in answer.exceeds)}."
-
-
-def limits_are_broken_together(answer: RouteAnswer) -> bool:
-    """Say whether no single limit helps, so that all of them would have to go."""
-    return answer.reason.kind == "over_limits_together"
+    why = sentence(answer.reason, effect, answer.route, study.unmeasurable)
+    if not answer.exceeds:
+        return why
+    together = " and " if answer.reason.kind == "over_limits_together" else "; or "
+    takes = f"It would take {together.join(needed(each, study) for each in answer.exceeds)}."
+    return f"{why} {takes}" if answer.reason.kind == "out_of_time" else takes
 
 
 def needed(each: Exceeded, study: Study) -> str:
-    """Return what would be needed of a limit, and what is allowed."""
+    """Return what would be needed of a limit, and what is allowed, both to the last digit."""
+    need, most = exact(each.needed), exact(each.allowed)
+    # A search that was cut short may have missed a plan that needs less.
+    need = need if each.proved else f"at most {need}"
     match each.limit:
         case "budget":
-            more, most = price_of(each.needed, study), price_of(each.allowed, study)
-            return f"a budget of {more}, where {most} is allowed"
+            currency = f" {study.currency}" if study.currency else ""
+            return f"a budget of {need}{currency}, where {most}{currency} is allowed"
         case "frame_size":
-            return f"a frame of {plain(each.needed)} units, where there are {plain(each.allowed)}"
+            return f"a frame of {need} units, where there are {most}"
         case "least_reliability":
-            return (
-                f"readings of reliability {plain(each.needed)}, where {plain(each.allowed)} is the"
-                " least allowed"
-            )
+            return f"readings of reliability {need}, where {most} is the least allowed"
         case limit:
             name = limit.removeprefix("burdens.")
             label = study.terms.burdens[name].label or name
-            most = plain(each.allowed)
-            return f"{plain(each.needed)} {label} per unit, where {most} is allowed"
+            return f"{need} {label} per unit, where {most} is allowed"
 
 
 def cautions(buy: Buy, study: Study) -> Iterable[str]:

@@ -4,7 +4,7 @@ from decimal import Decimal
 from fractions import Fraction
 from math import ceil, floor
 
-__all__ = ["counted", "money", "percent", "plain"]
+__all__ = ["counted", "exact", "money", "percent"]
 
 
 def money(amount: Fraction) -> str:
@@ -24,17 +24,16 @@ def rounded(amount: Fraction, places: int) -> Decimal:
     return Decimal(floor(amount * 10**places + Fraction(1, 2))).scaleb(-places)
 
 
-def plain(amount: Fraction) -> str:
-    """Return a number without idle zeros.
+def exact(number: Fraction) -> str:
+    """Return a number to its last digit, up to nine decimals.
 
     Examples
     --------
-    >>> plain(Fraction(3)), plain(Fraction(5, 2)), plain(Fraction(1, 3))
-    ('3', '2.5', '0.3333')
+    >>> exact(Fraction(3)), exact(Fraction("799.999")), exact(Fraction("120453.8"))
+    ('3', '799.999', '120,453.8')
     """
-    return (
-        f"{float(amount):.4g}" if amount < 10_000 else f"{float(amount):,.2f}".removesuffix(".00")
-    )
+    shown = f"{rounded(number, 9):,.9f}"
+    return shown.rstrip("0").rstrip(".")
 
 
 def percent(share: Fraction) -> str:

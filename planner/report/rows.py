@@ -4,11 +4,11 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 from fractions import Fraction
 
-from costs.bill import DIRECT, Bill, Line
+from costs.bill import DIRECT, Bill, Line, running_price
 from costs.prices import Purchase
 from planner.plan import Buy, Plan, RouteAnswer
 from planner.report.answers import beyond_limits, price_of
-from planner.report.numbers import money, plain
+from planner.report.numbers import exact, money
 from planner.study import Effect, Study
 from planner.words import conjoined, estimand, leans_on, sentence
 
@@ -147,11 +147,8 @@ def component_reason(name: str, buy: Buy, study: Study) -> str:
 
 def price_each(purchase: Purchase, study: Study) -> str:
     """Return what each unit costs, its burdens included; a batch beside it."""
-    burdens = sum(
-        (study.terms.burdens[name].price * taken for name, taken in purchase.takes.items()),
-        Fraction(0),
-    )
-    parts = [money(purchase.per_unit + burdens)] if purchase.per_unit + burdens else []
+    each = running_price(purchase, study.terms)
+    parts = [money(each)] if each else []
     if purchase.batch is not None:
         parts.append(f"{money(purchase.batch.price)} per {purchase.batch.holds}")
     return " + ".join(parts) or NOTHING
@@ -215,8 +212,8 @@ def burden_notes(buy: Buy, study: Study) -> Iterable[Note]:
     """Return what one unit has to bear."""
     for name, taken in buy.bill.burdens.items():
         limit = study.terms.burdens[name].limit
-        most = "" if limit is None else f", of at most {plain(limit)}"
-        yield Note(study.terms.burdens[name].label or name, f"{plain(taken)}{most}")
+        most = "" if limit is None else f", of at most {exact(limit)}"
+        yield Note(study.terms.burdens[name].label or name, f"{exact(taken)}{most}")
 
 
 # --------------------------------------------------------------------------------------- all routes
@@ -233,7 +230,7 @@ def route_row(answer: RouteAnswer, effect: Effect, study: Study) -> RouteRow:
         once=money(plan.buy.bill.setup) if plan else NOTHING,
         variables=str(len(plan.buy.measure)) if plan else NOTHING,
         estimand=estimand(answer.route, study),
-        leans_on=leans_on(answer.route, effect),
+        leans_on=leans_on(answer.route, effect) if plan else (),
         reason=beyond_limits(answer, effect, study),
         witnesses=tuple(
             sentence(each, effect, answer.route, study.unmeasurable) for each in answer.witnesses

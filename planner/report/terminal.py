@@ -20,6 +20,10 @@ __all__ = ["print_report", "report"]
 INDENT = (0, 0, 0, 2)
 MOST_CELLS = 22
 """A name longer than this is folded."""
+GAP = 2
+"""Blanks between columns of figures."""
+LEAST_WIDTH = 60
+"""Narrower windows get lines of this length."""
 LEGEND = "a → b: a acts on b. What stands in brackets cannot be measured."
 PARTS = {
     "treatment": "treatment and outcome",
@@ -33,11 +37,22 @@ PARTS = {
 
 
 def print_report(view: View, console: Console) -> None:
-    """Print a report, without the blanks that fill up its lines."""
+    """Print a report, without the blanks that fill up its lines.
+
+    Where the window is narrower than a table of figures, lines are longer than the window: a digit
+    is never left out.
+    """
+    console.width = max(console.width, LEAST_WIDTH, needed_width(view))
     with console.capture() as captured:
         console.print(report(view), markup=False, highlight=False)
     for line in captured.get().splitlines():
         console.file.write(line.rstrip() + "\n")
+
+
+def needed_width(view: View) -> int:
+    """Return the cells that the widest table of figures takes."""
+    tables = (purchase_columns(view), bill_columns(view))
+    return max(2 + sum(columns.values()) + GAP * len(columns) for columns in tables)
 
 
 def report(view: View) -> Group:
@@ -51,8 +66,8 @@ def report(view: View) -> Group:
         ("TAKE CARE", bullets(view.cautions)),
         ("WHAT ONE UNIT BEARS", [named(view.burdens)] if view.burdens else []),
         (f"THE BILL{beyond}", [bill(view)] if view.bill else []),
-        ("THE ROUTES SIDE BY SIDE", [side_by_side(view.routes)]),
-        ("WHY EACH ROUTE IS OPEN OR NOT", [reasons(view.routes)]),
+        ("THE ROUTES SIDE BY SIDE", [side_by_side(view)] if view.routes else []),
+        ("WHY EACH ROUTE IS OPEN OR NOT", [reasons(view.routes)] if view.routes else []),
         ("MEASURABLE, BUT NOT NEEDED", [named(view.left_out)] if view.left_out else []),
         ("ALSO GOOD TO KNOW", bullets(view.notes)),
     ]
@@ -93,73 +108,99 @@ def named(notes: Iterable[Note]) -> Table:
     return table
 
 
-def purchases(view: View) -> Group:
-    """Return what is bought: a line of figures for each, then how it is done and why; the sum."""
+def purchase_figures(view: View) -> list[tuple[str, ...]]:
+    """Return the heading and the lines of figures of what is bought, and of its sum."""
     heads = ("", "way", "units", "each unit", "set-up", f"in all {view.currency}".strip())
-    figures = [
+    rows = [
         (f"  {row.name}", row.way, row.units, row.each, row.once, row.amount) for row in view.bought
     ]
     sums = [(note.name, "", "", "", "", note.text) for note in view.sums]
-    widths = [
-        min(max(map(cell_len, column)), MOST_CELLS)
-        for column in zip(heads, *figures, *sums, strict=True)
-    ]
+    return [heads, *rows, *sums]
+
+
+def purchase_columns(view: View) -> dict[int, int]:
+    """Return how wide each column of what is bought is; long names are folded."""
+    widths = {at: max(map(cell_len, cells)) for at, cells in columns(purchase_figures(view))}
+    return {at: min(width, MOST_CELLS) if at < 2 else width for at, width in widths.items()}
+
+
+def columns(rows: Sequence[Sequence[str]]) -> Iterable[tuple[int, tuple[str, ...]]]:
+    """Return the columns of some rows, by number."""
+    return enumerate(zip(*rows, strict=True))
+
+
+def purchases(view: View) -> Group:
+    """Return what is bought: a line of figures for each, then how it is done and why; the sum."""
+    widths = list(purchase_columns(view).values())
+    heads, *figures = purchase_figures(view)
     parts: list[RenderableType] = [figures_line(heads, widths, "italic")]
     part = ""
-    for row, cells in zip(view.bought, figures, strict=True):
+    for row, cells in zip(view.bought, figures, strict=False):
         if PARTS[row.part] != part:
             part = PARTS[row.part]
             parts.append(Text(part, style="italic"))
         parts.append(figures_line(cells, widths, "bold"))
         about = ": ".join(filter(None, (row.how, row.why)))
         parts.append(Padding(Text(about), (0, 0, 0, 4)))
+    sums = figures[len(view.bought) :]
     return Group(*parts, *(figures_line(cells, widths, "bold") for cells in sums))
 
 
-def figures_line(cells: Sequence[str], widths: Sequence[int], style: str) -> Table:
-    """Return one line of figures; numbers stand to the right of their column."""
-    table = Table.grid(padding=(0, 1, 0, 0))
+def figures_line(
+    cells: Sequence[str], widths: Sequence[int], style: str, *, names: int = 2
+) -> Table:
+    """Return one line: some names, then numbers, which stand to the right of their column."""
+    table = Table.grid(padding=(0, GAP, 0, 0))
     for number, width in enumerate(widths):
-        justify: JustifyMethod = "left" if number < 2 else "right"
+        justify: JustifyMethod = "left" if number < names else "right"
         table.add_column(width=width, overflow="fold", justify=justify)
     table.add_row(*(Text(cell, style=style) for cell in cells))
     return table
 
 
-def bill(view: View) -> Table:
-    """Return the bill, line by line; columns in which nothing stands are left out."""
-    columns = {
-        "units": [row.units for row in view.bill],
-        "set-up": [row.setup for row in view.bill],
-        "per unit": [row.per_unit for row in view.bill],
-        "batches": [row.batches for row in view.bill],
-        "burdens": [row.burdens for row in view.bill],
-        f"amount {view.currency}".strip(): [row.amount for row in view.bill],
-    }
-    shown = {heading: cells for heading, cells in columns.items() if any(cells)}
-    table = Table(box=None, padding=(0, 1, 0, 0), show_edge=False, header_style="italic")
-    table.add_column("line", overflow="fold", min_width=12)
-    for heading in shown:
-        table.add_column(heading, justify="right", no_wrap=True)
-    for number, row in enumerate(view.bill):
-        last = number == len(view.bill) - 1
-        cells = [Text(cells[number]) for cells in shown.values()]
-        table.add_row(Text(row.name), *cells, style="bold" if last else "")
-    return table
+def bill_figures(view: View) -> list[tuple[str, ...]]:
+    """Return the heading and the lines of the bill, without columns in which nothing stands."""
+    heads = ("line", "units", "set-up", "per unit", "batches", "burdens")
+    rows = [
+        (row.name, row.units, row.setup, row.per_unit, row.batches, row.burdens, row.amount)
+        for row in view.bill
+    ]
+    full = [(*heads, f"amount {view.currency}".strip()), *rows]
+    kept = [at for at, (_, *cells) in columns(full) if any(cells)]
+    return [tuple(row[at] for at in kept) for row in full]
 
 
-def side_by_side(routes: Iterable[RouteRow]) -> Table:
+def bill_columns(view: View) -> dict[int, int]:
+    """Return how wide each column of the bill is; long names are folded."""
+    widths = {at: max(map(cell_len, cells)) for at, cells in columns(bill_figures(view))}
+    return {at: min(width, MOST_CELLS) if at == 0 else width for at, width in widths.items()}
+
+
+def bill(view: View) -> Group:
+    """Return the bill, line by line."""
+    widths = list(bill_columns(view).values())
+    heads, *lines, total = bill_figures(view)
+    return Group(
+        figures_line(heads, widths, "italic", names=1),
+        *(figures_line(cells, widths, "", names=1) for cells in lines),
+        figures_line(total, widths, "bold", names=1),
+    )
+
+
+def side_by_side(view: View) -> Table:
     """Return the routes beside each other."""
-    routes = list(routes)
+    routes = view.routes
+    # Beside a total that holds surcharges, what goes into it is before them.
+    direct = ", direct" if len(view.sums) > 1 else ""
     table = Table(box=None, padding=(0, 2, 0, 0), show_edge=False, header_style="italic")
     table.add_column("")
     for route in routes:
-        table.add_column(route.name, overflow="fold", ratio=1)
+        table.add_column(Text(route.name), overflow="fold", ratio=1)
     for heading, cells in (
         ("status", [route.status for route in routes]),
         ("total", [route.total for route in routes]),
-        ("each unit", [route.each for route in routes]),
-        ("set-up", [route.once for route in routes]),
+        (f"each unit{direct}", [route.each for route in routes]),
+        (f"set-up{direct}", [route.once for route in routes]),
         ("variables", [route.variables for route in routes]),
         ("estimates", [route.estimand for route in routes]),
         ("leans on", ["\n".join(f"- {clause}" for clause in route.leans_on) for route in routes]),

@@ -4,7 +4,12 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 from planner.plan import EffectAnswer, Recommendation, RouteAnswer
-from planner.report.answers import answer_sentences, cautions, closing_notes
+from planner.report.answers import (
+    answer_sentences,
+    cautions,
+    closing_notes,
+    same_for_all,
+)
 from planner.report.rows import (
     BillRow,
     Bought,
@@ -44,6 +49,7 @@ class View:
     bill: tuple[BillRow, ...]
     burdens: tuple[Note, ...]
     routes: tuple[RouteRow, ...]
+    """Empty where one reason closes them all."""
     left_out: tuple[Note, ...]
     """What is of no use, and why."""
     notes: tuple[str, ...]
@@ -70,7 +76,9 @@ def view_of(answer: Recommendation) -> View:
         cautions=tuple(cautions(buy, study)) if buy else (),
         bill=tuple(bill_rows(buy.bill)) if buy else (),
         burdens=tuple(burden_notes(buy, study)) if buy else (),
-        routes=tuple(route_row(each, effect, study) for each in effect_answer.routes),
+        routes=()
+        if same_for_all(effect_answer)
+        else tuple(route_row(each, effect, study) for each in effect_answer.routes),
         left_out=left_out_notes(plan, route, effect, study, only_never=False) if plan else (),
         notes=tuple(closing_notes(study, buy)),
     )

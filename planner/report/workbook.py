@@ -1,16 +1,17 @@
 """The hand-over workbook: the measurement list, and the bill with live formulas.
 
-Changing a price, a share or the number of records in the bill updates units, batches and totals; as
-it is written, its total is the plan's.
+Changing a price, a yield, a share or the number of records in the bill updates units, batches and
+totals there and in the measurement list; as it is written, its total is the plan's.
 """
 
 import io
+import re
 from collections.abc import Sequence
 from fractions import Fraction
 from typing import TYPE_CHECKING
 
-from costs.bill import Bill, reach
-from costs.prices import Purchase
+from costs.bill import Bill, needed_by, running_price
+from costs.prices import Name, Purchase, shown_name
 from planner.plan import Buy
 from planner.report.view import View
 from planner.study import Study
@@ -43,11 +44,17 @@ MEASURE_COLUMNS = (
     ("way", 14),
     ("how", 44),
     ("units", 10),
-    ("each unit", 16),
     ("set-up", 12),
-    ("in all", 12),
-    ("why", 60),
+    ("per unit", 12),
+    ("burdens per unit", 12),
+    ("batch price", 12),
+    ("in all", 14),
+    ("why", 70),
 )
+TOTAL = 5
+"""Rows from the last purchase to the total of the bill."""
+FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\ud800-\udfff\ufffe\uffff]")
+"""Characters that XML forbids."""
 
 
 def workbook_bytes(view: View, study: Study, buy: Buy) -> bytes:
@@ -66,41 +73,41 @@ def workbook_bytes(view: View, study: Study, buy: Buy) -> bytes:
 
 
 def write_measurements(sheet: "Worksheet", view: View) -> None:
-    """Write the measurement list: what is bought, in which part, and why."""
+    """Write the measurement list: what is bought, in which part, and why; figures from the bill."""
     sheet.title = "measure"
     write_text(sheet["A1"], view.title, bold=True)
-    write_text(sheet["A2"], view.answer[0])
-    write_heading(sheet, 4, MEASURE_COLUMNS)
-    for row, item in enumerate(view.bought, 5):
-        cells = (
-            item.name,
-            item.part,
-            item.way,
-            item.how,
-            item.units,
-            item.each,
-            item.once,
-            item.amount,
-            item.why,
-        )
-        for column, text in enumerate(cells, 1):
+    write_text(sheet["A2"], view.subject)
+    write_heading(sheet, FIRST_LINE - 1, MEASURE_COLUMNS)
+    for row, item in enumerate(view.bought, FIRST_LINE):
+        texts = (item.name, item.part, item.way, item.how)
+        for column, text in enumerate(texts, 1):
             write_text(sheet.cell(row, column), text)
-    sheet.freeze_panes = "A5"
+        for column, source in enumerate(("D", "E", "F", "G", "H", "K"), 5):
+            money = MONEY if source != "D" else ""
+            write_value(sheet.cell(row, column), f"=bill!{source}{row}", money)
+        write_text(sheet.cell(row, 11), item.why)
+    last = FIRST_LINE + len(view.bought) - 1
+    write_text(sheet.cell(last + 2, 1), "total, surcharges included", bold=True)
+    write_value(sheet.cell(last + 2, 10), f"=bill!K{last + TOTAL}", MONEY)
+    sheet.freeze_panes = f"B{FIRST_LINE}"
 
 
 def write_bill(sheet: "Worksheet", view: View, study: Study, buy: Buy) -> None:
     """Write the bill: terms on top, a row for each purchase, surcharges and the total below."""
-    names: list[str | tuple[str, str]] = [*buy.measure.items(), *buy.bill.components]
-    purchases = [study.prices.purchase(name) for name in names]
+    names: list[Name] = [*buy.measure.items(), *buy.bill.components]
+    rows = {name: row for row, name in enumerate(names, FIRST_LINE)}
     last = FIRST_LINE + len(names) - 1
     write_text(sheet["A1"], view.title, bold=True)
     write_terms(sheet, study, buy.bill, last)
     write_heading(sheet, FIRST_LINE - 1, BILL_COLUMNS)
-    for row, (name, purchase) in enumerate(zip(names, purchases, strict=True), FIRST_LINE):
-        label = name if isinstance(name, str) else ".".join(name)
-        write_text(sheet.cell(row, 1), label)
+    for name, row in rows.items():
+        purchase = study.prices.purchase(name)
+        write_text(sheet.cell(row, 1), shown_name(name))
         write_text(sheet.cell(row, 2), "component" if isinstance(name, str) else "way")
         write_line(sheet, row, study, purchase)
+        needs = sorted(rows[need] for need in needed_by(purchase.needs, study.prices))
+        yields = ",".join(f"J{need}" for need in needs)
+        write_value(sheet.cell(row, 3), f"=PRODUCT({yields})" if needs else 1)
     write_totals(sheet, last)
     sheet.freeze_panes = f"B{FIRST_LINE}"
 
@@ -112,33 +119,26 @@ def write_terms(sheet: "Worksheet", study: Study, bill: Bill, last: int) -> None
         ("complete records", bill.records),
         ("usable share of them", study.terms.usable),
         ("share of started units kept", f"=B4*PRODUCT(J{FIRST_LINE}:J{last})"),
-        (f"{study.unit} units started", f"=ROUNDUP(ROUND(B3/B5,{places}),0)"),
+        ("units started", f"=ROUNDUP(ROUND(B3/B5,{places}),0)"),
         ("overhead (share of direct costs)", study.terms.overhead),
         ("contingency (share of both)", study.terms.contingency),
-        ("currency", study.currency),
     )
     for row, (label, value) in enumerate(rows, 3):
         write_text(sheet.cell(row, 1), label)
-        if label == "currency":
-            write_text(sheet.cell(row, 2), str(value))
-        else:
-            write_value(sheet.cell(row, 2), value)
+        write_value(sheet.cell(row, 2), value)
+    write_text(sheet.cell(9, 1), "currency")
+    write_text(sheet.cell(9, 2), study.currency)
 
 
 def write_line(sheet: "Worksheet", row: int, study: Study, purchase: Purchase) -> None:
     """Write the numbers of one purchase, its units and its amount as formulas."""
     places = rounding_places(study.terms.records)
-    burdens = sum(
-        (study.terms.burdens[name].price * taken for name, taken in purchase.takes.items()),
-        Fraction(0),
-    )
     batch = purchase.batch
     cells: dict[int, Fraction | int | str] = {
-        3: reach(purchase, study.prices),
         4: f"=ROUNDUP(ROUND($B$6*C{row},{places}),0)",
         5: purchase.setup,
         6: purchase.per_unit,
-        7: burdens,
+        7: running_price(purchase, study.terms) - purchase.per_unit,
         8: batch.price if batch else 0,
         9: batch.holds if batch else 1,
         10: purchase.yields,
@@ -155,7 +155,7 @@ def write_totals(sheet: "Worksheet", last: int) -> None:
         (direct, "direct costs", f"=SUM(K{FIRST_LINE}:K{last})"),
         (direct + 1, "overhead", f"=K{direct}*B7"),
         (direct + 2, "contingency", f"=(K{direct}+K{direct + 1})*B8"),
-        (direct + 3, "total", f"=SUM(K{direct}:K{direct + 2})"),
+        (last + TOTAL, "total", f"=SUM(K{direct}:K{direct + 2})"),
     ):
         write_text(sheet.cell(row, 1), label, bold=label == "total")
         write_value(sheet.cell(row, 11), formula, MONEY)
@@ -191,10 +191,9 @@ def write_value(
 
 
 def write_text(cell: "Cell | MergedCell", text: str, *, bold: bool = False) -> None:
-    """Write text that stays text, whatever it begins with, without characters that XLSX forbids."""
-    from openpyxl.cell.cell import ILLEGAL_CHARACTERS_RE  # noqa: PLC0415
+    """Write text that stays text, whatever it begins with, without characters that XML forbids."""
     from openpyxl.styles import Font  # noqa: PLC0415
 
-    cell.value = ILLEGAL_CHARACTERS_RE.sub(" ", text)
+    cell.value = FORBIDDEN.sub(" ", text)
     cell.data_type = "s"
     cell.font = Font(bold=bold)
