@@ -13,7 +13,7 @@ from functools import partial
 from importlib import resources
 from io import TextIOWrapper
 from pathlib import Path
-from typing import Annotated
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
@@ -24,6 +24,10 @@ from planner.reading import read_study
 from planner.report.files import refuse_overwriting, write_whole
 from planner.study import Study
 from planner.version import VERSION
+
+if TYPE_CHECKING:
+    from planner.plan import Recommendation
+    from planner.report.view import View
 
 __all__ = ["app", "main"]
 
@@ -65,7 +69,7 @@ def new(
         "study.yaml"
     ),
 ) -> None:
-    """Write a commented study file to fill in; never over another file."""
+    """Write a commented study file to fill in."""
     refuse_overwriting(path, "new", "Name another file; an existing one is never replaced.")
     template = resources.files("planner").joinpath("new_study.yaml").read_bytes()
     write_whole(path, template, "new")
@@ -74,7 +78,7 @@ def new(
 
 @app.command()
 def check(study: StudyFile, as_json: AsJson = False) -> None:
-    """Say what a study holds, and everything that is wrong with it."""
+    """Say what a study holds, or all that is wrong with it."""
     with numpy_left_out():
         summary = summary_of(read_study(study), datetime.now(tz=UTC).date())
     if as_json:
@@ -90,30 +94,39 @@ def recommend(
     route: Annotated[
         list[str] | None,
         typer.Option(
-            help="Allow this route only: conditioning, instrument or mechanism. Repeatable."
+            metavar="ROUTE",
+            help="Allow this route only: conditioning, instrument or mechanism. Repeatable.",
         ),
     ] = None,
     records: Annotated[
-        int | None, typer.Option(help="Complete records, in place of the study's.")
+        int | None,
+        typer.Option(metavar="NUMBER", help="Complete records, in place of the study's."),
     ] = None,
     without: Annotated[
         list[str] | None,
-        typer.Option(help="A variable, VARIABLE.WAY or component that cannot be had. Repeatable."),
+        typer.Option(
+            metavar="NAME",
+            help="A variable, VARIABLE.WAY or component that cannot be had. Repeatable.",
+        ),
     ] = None,
     held: Annotated[
         list[str] | None,
         typer.Option(metavar="VARIABLE.WAY", help="A reading already in hand, free. Repeatable."),
     ] = None,
     prices: Annotated[
-        list[Path] | None, typer.Option(help="Price list in place of the study's. Repeatable.")
+        list[Path] | None,
+        typer.Option(metavar="FILE", help="Price list in place of the study's. Repeatable."),
     ] = None,
     workbook: Annotated[
-        Path | None, typer.Option(help="Write measurement list and bill to this XLSX file.")
+        Path | None,
+        typer.Option(metavar="FILE", help="Write measurement list and bill to this XLSX file."),
     ] = None,
     force: Annotated[bool, typer.Option("--force", help="Replace files that are there.")] = False,
-    seconds: Annotated[float, typer.Option(min=0.1, help="Time for each route.")] = 60.0,
+    seconds: Annotated[
+        float, typer.Option(min=0.1, metavar="NUMBER", help="Time for each route.")
+    ] = 60.0,
 ) -> None:
-    """Find the cheapest plan, prove it, and say why each item is in it or not."""
+    """Find the cheapest plan, prove it, and give reasons."""
     original = read_study(study, prices=prices)
     if workbook is not None:
         refuse_workbook(workbook, original, force=force)
@@ -131,19 +144,25 @@ def recommend(
         answer = recommended(changed, seconds=seconds, report=report)
     view = view_of(answer)
     # Files first: whoever looks at the top of the report only has them all the same.
-    if workbook is not None and answer.buy is not None:
-        from planner.report.workbook import workbook_bytes  # noqa: PLC0415
-
-        write_whole(workbook, workbook_bytes(view, changed, answer.buy), "--workbook")
-        say(f"{workbook} is written.")
-    elif workbook is not None:
-        say(f"There is no plan, so {workbook} is not written.")
+    if workbook is not None:
+        write_workbook(workbook, view, answer)
     if as_json:
         print_json(answer.as_dict())
     else:
         print_report(view, Console())
     if answer.buy is None:
         raise typer.Exit(NO_PLAN)
+
+
+def write_workbook(path: Path, view: "View", answer: "Recommendation") -> None:
+    """Write the workbook of a plan, and say so; where there is no plan, say that."""
+    if answer.buy is None:
+        say(f"There is no plan, so {path} is not written.")
+        return
+    from planner.report.workbook import workbook_bytes  # noqa: PLC0415
+
+    write_whole(path, workbook_bytes(view, answer.study, answer.buy), "--workbook")
+    say(f"{path} is written.")
 
 
 def refuse_workbook(path: Path, study: Study, *, force: bool) -> None:

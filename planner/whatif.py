@@ -145,8 +145,8 @@ def unknown(option: str, name: str, study: Study) -> FaultyInput:
     """Return the refusal of a name that is not there."""
     ways = [f"{v}.{way}" for v, named in study.prices.ways.items() for way in named]
     known = ways if option == "--held" else [*study.prices.ways, *study.prices.components, *ways]
-    gone = "or not any more" if study.changes else ""
-    wrong = f"'{shortened(name)}' is nothing that can be bought{f', {gone}' if gone else ''}."
+    gone = ", or not any more" if study.changes else ""
+    wrong = f"'{shortened(name)}' is nothing that can be bought{gone}."
     return refusal(option, wrong, nearest(name, known))
 
 

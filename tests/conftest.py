@@ -10,6 +10,26 @@ from planner.cli import main
 
 ROOT = Path(__file__).parents[1]
 EXAMPLES = sorted((ROOT / "examples").glob("*.yaml"))
+STUDY = """\
+title: Does a call help?
+currency: EUR
+effect: {treatment: x, outcome: y}
+size: {records: 40}
+variables:
+  x:
+    caused_by: [c]
+    per_unit: 1
+  y:
+    caused_by: {x: 0.3, c: -0.2}
+    ways:
+      ask: {per_unit: 0.50, takes: {minutes: 2}}
+  c: {per_unit: 2, needs: [visit]}
+components:
+  visit: {setup: 10}
+burdens:
+  minutes: {limit: 20, price: 0.5}
+"""
+"""Without a fault; tests put one in."""
 
 
 class Ran(NamedTuple):

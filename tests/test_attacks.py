@@ -11,27 +11,8 @@ from openpyxl.worksheet.formula import ArrayFormula
 
 from costs.faults import FaultyInput
 from planner import read_study
-from tests.conftest import Ran
+from tests.conftest import STUDY, Ran
 
-STUDY = """\
-title: Does a call help?
-currency: EUR
-effect: {treatment: x, outcome: y}
-size: {records: 40}
-variables:
-  x:
-    caused_by: [c]
-    per_unit: 1
-  y:
-    caused_by: {x: 0.3, c: -0.2}
-    ways:
-      ask: {per_unit: 0.50, takes: {minutes: 2}}
-  c: {per_unit: 2, needs: [visit]}
-components:
-  visit: {setup: 10}
-burdens:
-  minutes: {limit: 20, price: 0.5}
-"""
 HEAD = "effect: {treatment: x, outcome: y}\nsize: {records: 400}\nvariables:\n"
 PLAIN = HEAD + "  x: {per_unit: 1}\n  y: {per_unit: 1, caused_by: [x]}\n"
 

@@ -144,3 +144,12 @@ def test_words_that_are_no_command_are_refused(run: Callable[..., Ran]) -> None:
     ran = run("recomend", PERMITS)
     assert (ran.code, ran.out) == (2, "")
     assert "recommend" in ran.err
+
+
+def test_help_names_what_to_write_and_cuts_no_sentence_short(run: Callable[..., Ran]) -> None:
+    # It once ended in "never over another...", and asked for <list[str]>.
+    for words in ((), ("new",), ("check",), ("recommend",)):
+        shown = run(*words, "--help").out
+        assert "Usage:" in shown
+        assert "..." not in shown.replace("[ARGS]...", "")
+        assert "list[" not in shown

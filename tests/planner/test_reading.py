@@ -11,26 +11,8 @@ from costs.faults import FaultyInput
 from costs.prices import Batch, Burden, Component, Way
 from planner import read_study
 from planner.study import ClusterDesign, Effect, HiddenCause, PriceSource, Range, Tolerance
+from tests.conftest import STUDY
 
-STUDY = """\
-title: Does a call help?
-currency: EUR
-effect: {treatment: x, outcome: y}
-size: {records: 40}
-variables:
-  x:
-    caused_by: [c]
-    per_unit: 1
-  y:
-    caused_by: {x: 0.3, c: -0.2}
-    ways:
-      ask: {per_unit: 0.50, takes: {minutes: 2}}
-  c: {per_unit: 2, needs: [visit]}
-components:
-  visit: {setup: 10}
-burdens:
-  minutes: {limit: 20, price: 0.5}
-"""
 EVERYTHING = """\
 title: "Does it: really?"
 unit: household
