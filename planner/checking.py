@@ -3,12 +3,31 @@
 from collections.abc import Iterator
 from dataclasses import asdict, dataclass
 from datetime import date
+from decimal import Decimal
 
 from costs.bill import needed_by
 from costs.located import listed, shortened
-from planner.study import Study, shown_time
+from planner.linear import (
+    is_learnable,
+    missing_in_words,
+    model_as_drawn,
+    units_per_unit,
+    why_zero,
+)
+from planner.study import Size, Study, shown_time
 
-__all__ = ["Summary", "not_yet_applied", "out_of_date", "remarks", "summary_of"]
+__all__ = [
+    "Summary",
+    "left_unchecked",
+    "out_of_date",
+    "remarks",
+    "resting_on_default",
+    "size_in_words",
+    "summary_of",
+]
+
+USUAL = Size()
+"""Power and confidence where nobody named another."""
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -18,7 +37,13 @@ class Summary:
     title: str
     treatment: str
     outcome: str
-    records: int
+    size: str
+    """How large the study is to be, in words."""
+    records: int | None
+    """None where they are to be worked out."""
+    effect: float | None
+    """What the strengths imply, in ``effect_unit``; None where one that matters is missing."""
+    effect_unit: str
     variables: int
     measurable: int
     hidden_common_causes: int
@@ -44,12 +69,18 @@ def summary_of(study: Study, today: date) -> Summary:
     (effect,) = study.effects
     ways = [way for named in study.prices.ways.values() for way in named.values()]
     strengths = [s for each in study.variables.values() for s in each.causes.values()]
+    model = model_as_drawn(study, effect)
     whens = [each.when for each in study.variables.values() if each.when is not None]
     return Summary(
         title=study.title,
         treatment=effect.treatment,
         outcome=effect.outcome,
-        records=study.terms.records,
+        size=size_in_words(study.size, study.currency),
+        records=study.size.records,
+        effect=model.effect * units_per_unit(study, effect) if model else None,
+        effect_unit="natural units of the outcome per unit of the treatment"
+        if study.size.in_units
+        else "outcome SDs per treatment SD",
         variables=len(study.variables),
         measurable=len(study.prices.ways),
         hidden_common_causes=len(study.hidden_causes),
@@ -64,9 +95,38 @@ def summary_of(study: Study, today: date) -> Summary:
     )
 
 
+def size_in_words(size: Size, currency: str) -> str:
+    """Return how large a study is to be.
+
+    Examples
+    --------
+    >>> size_in_words(Size(detect=0.12, confidence=0.9), "EUR")
+    'detect 0.12 with power 0.8, confidence 0.9'
+    >>> from fractions import Fraction
+    >>> size_in_words(Size(spend=Fraction("60000.5")), "EUR")
+    'as narrow an interval as 60,000.5 EUR buys'
+    """
+    if size.records is not None:
+        words = f"{size.records:,} records"
+    elif size.half_width is not None:
+        words = f"half-width {size.half_width:g}"
+    elif size.spend is not None:
+        money = f"{Decimal(size.spend.numerator) / size.spend.denominator:,f} {currency}".strip()
+        words = f"as narrow an interval as {money} buys"
+    elif size.detect is not None:
+        words = f"detect {size.detect:g} with power {size.power:g}"
+    else:
+        words = f"detect the effect that the strengths imply, with power {size.power:g}"
+    if size.confidence != USUAL.confidence:
+        words += f", confidence {size.confidence:g}"
+    return f"{words}, in natural units" if size.in_units else words
+
+
 def remarks(study: Study, today: date) -> Iterator[str]:
     """Return what is worth a second look."""
-    yield from not_yet_applied(study)
+    yield from left_unchecked(study)
+    yield from without_effect(study)
+    yield from in_little_confidence(study)
     yield from out_of_date(study, today)
     yield from left_unread(study)
     yield from no_way_to_the_outcome(study)
@@ -77,17 +137,47 @@ def remarks(study: Study, today: date) -> Iterator[str]:
     yield from resting_on_default(study)
 
 
-def not_yet_applied(study: Study) -> Iterator[str]:
-    """Say which keys are read and kept, but change no answer yet."""
-    if study.tolerance.bias is not None:
-        yield "tolerance.bias is not applied yet: plans are not checked for bias by poor readings."
+def left_unchecked(study: Study) -> Iterator[str]:
+    """Say which wishes cannot be looked after, and what was not added up."""
+    (effect,) = study.effects
+    wishes = list(wishes_that_take_strengths(study))
+    if wishes and is_learnable(study, effect):
+        missing = missing_in_words(study, effect, most=3)
+        if missing:
+            yield f"{' and '.join(wishes)} cannot be applied: {missing}."
     if study.unchecked_strengths:
         yield (
             f"The strengths into {study.unchecked_strengths:,} variables were not added up: the"
             " diagram is too large for it."
         )
-    if study.tolerance.first_stage_f is not None:
-        yield "tolerance.first_stage_F is not applied yet: an instrument's strength is not checked."
+
+
+def wishes_that_take_strengths(study: Study) -> Iterator[str]:
+    """Return the keys that are of no use as long as strengths are missing."""
+    if study.tolerance.bias is not None:
+        yield "tolerance.bias"
+    # A floor of 0 switches the check off.
+    if study.tolerance.first_stage_f:
+        yield "tolerance.first_stage_F"
+    if study.size.confidence != USUAL.confidence:
+        yield "size.confidence"
+
+
+def without_effect(study: Study) -> Iterator[str]:
+    """Say if the strengths make the effect zero although a directed path leads there."""
+    (effect,) = study.effects
+    model = model_as_drawn(study, effect)
+    if model is not None and not model.effect and is_learnable(study, effect):
+        yield f"By the strengths the effect is zero: {why_zero(model, effect)}."
+
+
+def in_little_confidence(study: Study) -> Iterator[str]:
+    """Say if the confidence looks like its opposite."""
+    if study.size.confidence < 0.5:
+        yield (
+            f"size.confidence is {study.size.confidence:g}: intervals would miss the effect more"
+            " often than not. 0.95 is usual."
+        )
 
 
 def out_of_date(study: Study, today: date) -> Iterator[str]:

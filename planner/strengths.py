@@ -6,7 +6,7 @@ Plain Python: the study is checked before any library for numbers is loaded.
 from collections.abc import Iterable, Mapping, Sequence
 from math import sqrt
 
-__all__ = ["MOST_COVARIANCES", "WORDS", "explained_shares", "loadings"]
+__all__ = ["MOST_COVARIANCES", "WORDS", "explained_share", "explained_shares", "loadings"]
 
 WORDS = {"weak": 0.1, "moderate": 0.3, "strong": 0.5}
 """Strengths in words, after Cohen (1988) for correlations; from memory."""
@@ -51,18 +51,30 @@ def explained_shares(causes: Causes, order: Sequence[str]) -> dict[str, float | 
     covariances = Covariances(causes, order)
     shares: dict[str, float | None] = {}
     for name in order:
-        known = [(cause, b) for cause, b in causes[name].items() if b is not None]
-        if not known or len(known) < len(causes[name]):
-            continue
-        if covariances.gave_up or len(known) > MOST_CAUSES:
-            shares[name] = None
-            continue
-        terms = [(b * c, covariances.between(p, q)) for p, b in known for q, c in known]
-        if all(covariance is not None for _, covariance in terms):
-            shares[name] = sum(product * (covariance or 0) for product, covariance in terms)
-        elif covariances.gave_up:
-            shares[name] = None
+        if causes[name] and None not in causes[name].values():
+            share = share_of(name, causes, covariances)
+            if share is not None or covariances.gave_up or len(causes[name]) > MOST_CAUSES:
+                shares[name] = share
     return shares
+
+
+def explained_share(causes: Causes, order: Sequence[str], name: str) -> float | None:
+    """Return the share of one variable's variance that its causes explain.
+
+    None where a coefficient that matters is unknown, or where it would take too long to say.
+    """
+    return share_of(name, causes, Covariances(causes, order))
+
+
+def share_of(name: str, causes: Causes, covariances: "Covariances") -> float | None:
+    """Return what causes with a coefficient explain of a variable; None where that is unknown."""
+    known = [(cause, b) for cause, b in causes[name].items() if b is not None]
+    if covariances.gave_up or len(known) > MOST_CAUSES:
+        return None
+    terms = [(b * c, covariances.between(p, q)) for p, b in known for q, c in known]
+    if any(covariance is None for _, covariance in terms):
+        return None
+    return sum(product * (covariance or 0) for product, covariance in terms)
 
 
 class Covariances:

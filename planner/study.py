@@ -14,12 +14,14 @@ __all__ = [
     "HiddenCause",
     "PriceSource",
     "Range",
+    "Size",
     "Study",
     "Tolerance",
     "Variable",
     "shown_time",
 ]
 
+USUAL_F = Fraction(20)
 HIDDEN = "hidden common cause of "
 """How the name of a common cause that has none of its own begins."""
 
@@ -76,12 +78,48 @@ class HiddenCause:
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
+class Size:
+    """How large the study is to be: by its records, or by what it is to achieve.
+
+    Just one of ``records``, ``half_width``, ``detect`` (or ``implied``) and ``spend`` is given.
+    """
+
+    records: int | None = None
+    """Complete records, whatever they achieve."""
+    half_width: float | None = None
+    """Of the confidence interval of the effect."""
+    detect: float | None = None
+    """The size of effect that is to be detected."""
+    implied: bool = False
+    """The effect that the strengths imply is to be detected."""
+    power: float = 0.8
+    """With which probability it is to be detected."""
+    spend: Fraction | None = None
+    """The money that is to buy as narrow an interval as it can."""
+    confidence: float = 0.95
+    in_units: bool = False
+    """Effects are in natural units, not in outcome SDs per treatment SD."""
+
+    @property
+    def is_target(self) -> bool:
+        """Whether the number of records is to be worked out."""
+        return self.records is None
+
+
+@dataclass(frozen=True, kw_only=True, slots=True)
 class Tolerance:
     """What the user will put up with."""
 
     least_reliability: Fraction | None = None
-    bias: float | None = None
-    first_stage_f: float | None = None
+    bias: Fraction | None = None
+    """Share of the effect."""
+    first_stage_f: Fraction | None = None
+    """Least first-stage F of an instrument; None where nobody said."""
+
+    @property
+    def floor_of_f(self) -> Fraction:
+        """The least first-stage F: 20 where nobody said, so that nine in ten studies see 10."""
+        return USUAL_F if self.first_stage_f is None else self.first_stage_f
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -119,7 +157,9 @@ class Study:
     hidden_causes: tuple[HiddenCause, ...] = ()
     prices: PriceList
     """Ways of the study's variables only; a variable without one cannot be measured."""
+    size: Size
     terms: Terms
+    """For ``size.records`` records; at a target for one, until a plan has worked out how many."""
     budget: Fraction | None = None
     frame_size: int | None = None
     tolerance: Tolerance = Tolerance()

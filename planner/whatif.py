@@ -13,11 +13,14 @@ __all__ = ["held", "with_records", "with_routes", "without"]
 
 
 def with_records(study: Study, records: int) -> Study:
-    """Return the study on another number of complete records."""
+    """Return the study on so many complete records, whatever sized it before."""
     if not 1 <= records <= MOST_RECORDS:
         raise refusal("--records", f"is {records:,}.", f"Give a number from 1 to {MOST_RECORDS:,}.")
+    size = replace(
+        study.size, records=records, half_width=None, detect=None, implied=False, spend=None
+    )
     terms = replace(study.terms, records=records)
-    return changed(replace(study, terms=terms), f"--records {records}")
+    return changed(replace(study, size=size, terms=terms), f"--records {records}")
 
 
 def with_routes(study: Study, routes: Sequence[str]) -> Study:

@@ -1,19 +1,24 @@
 """The keys of a study file that stand alone: size, fieldwork, tolerance, money, waves, routes."""
 
-from collections.abc import Collection, Mapping
+from collections.abc import Collection, Mapping, Sequence
 from fractions import Fraction
 from typing import Any
 
-from costs.located import Located
+from costs.located import Located, Scalar
 from costs.prices import MOST_RECORDS, Burden, Terms
 from costs.reading import PRICE_PLACES
-from planner.study import ClusterDesign, Tolerance
+from planner.study import ClusterDesign, Size, Tolerance
 
 __all__ = [
+    "SIZES",
+    "SIZE_KEYS",
+    "TARGETS",
     "read_budget",
     "read_design_effect",
     "read_frame_size",
+    "read_in_units",
     "read_routes",
+    "read_size",
     "read_terms",
     "read_text",
     "read_tolerance",
@@ -22,11 +27,19 @@ __all__ = [
 
 LARGEST_SURCHARGE = 10
 """A share: 10 is ten times the direct costs, so a larger one was meant in per cent."""
-TARGETS = ("half_width", "detect", "power", "spend")
-SIZE_KEYS = ("records", *TARGETS, "confidence", "in")
+TARGETS = ("records", "half_width", "detect", "spend")
+"""Just one of them sizes a study."""
+SIZE_KEYS = (*TARGETS, "power", "confidence", "in")
+SIZES = (
+    "Write 'size: {records: 400}', or {half_width: 0.05}, {detect: 0.12, power: 0.8} or"
+    " {spend: 60000}."
+)
+USUAL_CONFIDENCE = Fraction(str(Size().confidence))
+MOST_TOLERATED = {"least_reliability": 1, "bias": None, "first_stage_F": None}
+"""What may stand in ``tolerance``, and how much it can be."""
 
 Found = Mapping[str, Located]
-"""The keys of a study file, those of ``fieldwork`` among them."""
+"""The keys of a study file, those of ``fieldwork`` and ``size`` among them."""
 
 
 def read_text(found: Found, key: str) -> str:
@@ -34,40 +47,83 @@ def read_text(found: Found, key: str) -> str:
     return (found[key].line() or "") if key in found else ""
 
 
-def read_terms(found: Found, burdens: Mapping[str, Burden]) -> Terms | None:
-    """Return the number of records, and what is lost and added; None if that is at fault."""
-    records = read_records(found["size"]) if "size" in found else None
-    usable = read_usable(found)
-    overhead, contingency = read_surcharge(found, "overhead"), read_surcharge(found, "contingency")
-    if records is None:
+def read_size(found: Found, *, in_units: bool) -> Size | None:
+    """Return how large the study is to be; None if the key that says so is missing or at fault."""
+    targets = [key for key in found if key in TARGETS]
+    check_targets(found, targets)
+    wanted = [read_target(key, found[key]) for key in targets]
+    chances = read_chances(found)
+    if len(wanted) != 1 or wanted[0] is None:
         return None
-    return Terms(
-        records=records,
-        usable=usable,
-        burdens=burdens,
-        overhead=overhead,
-        contingency=contingency,
-    )
+    return Size(**wanted[0], **chances, in_units=in_units)
 
 
-def read_records(place: Located) -> int | None:
-    """Return the number of complete records in ``size: {records: 400}``."""
-    found = place.entries(SIZE_KEYS)
-    if "confidence" in found:
-        found["confidence"].number(above=0, below=1)
-    if "in" in found:
-        found["in"].choice(("units",))
-    targets = [key for key in TARGETS if key in found]
-    for key in targets:
-        found[key].fault(
-            "asks for a stated precision, but only 'records' is possible yet.",
-            "Write 'size: {records: 400}', the number of complete records.",
+def check_targets(found: Found, targets: Sequence[str]) -> None:
+    """Say whether there is no key that sizes the study, or more than one, or power without use."""
+    place = found.get("size")
+    if place is not None and not targets and (place.is_mapping or place.is_empty):
+        place.fault("does not say how large the study is to be.", SIZES)
+    for key in targets[1:]:
+        wrong = f"stands beside '{targets[0]}', which sizes the study already."
+        found[key].fault(wrong, "Keep one of the two.")
+    if targets and "power" in found and "detect" not in targets:
+        mend = f"Leave it out, or size the study by an effect to detect in place of '{targets[0]}'."
+        found["power"].fault("goes with 'detect' only.", mend)
+
+
+def read_target(key: str, place: Located) -> dict[str, Any] | None:
+    """Return the field of a size that one of its keys fills; None if that is at fault."""
+    if key == "detect" and is_word(place):
+        return {"implied": True} if place.choice(("implied",)) else None
+    value: Fraction | float | None
+    if key == "records":
+        value = place.integer(least=1, most=MOST_RECORDS)
+    elif key == "spend":
+        value = place.number(least=0, places=PRICE_PLACES)
+    else:
+        number = place.number(above=0)
+        value = None if number is None else float(number)
+    return None if value is None else {key: value}
+
+
+def is_word(place: Located) -> bool:
+    """Say whether a word is written here, where a number may be."""
+    return isinstance(place.node, Scalar) and place.node.text.strip()[:1].isalpha()
+
+
+def read_chances(found: Found) -> dict[str, Any]:
+    """Return power and confidence, as far as they are given."""
+    given: dict[str, Fraction] = {}
+    for key in ("power", "confidence"):
+        share = found[key].number(above=0, below=1) if key in found else None
+        if share is not None:
+            given[key] = share
+    confidence = given.get("confidence", USUAL_CONFIDENCE)
+    # A test decides for the right side that often even where the data say nothing.
+    chance = (1 - confidence) / 2
+    if given.get("power", 1) <= chance:
+        found["power"].fault(
+            f"is {found['power'].shown}, but chance alone detects with {float(chance):g} at a"
+            f" confidence of {float(confidence):g}.",
+            f"Write a number that is above {float(chance):g}.",
         )
-    if "records" in found:
-        return found["records"].integer(least=1, most=MOST_RECORDS)
-    if not targets and (place.is_mapping or place.is_empty):
-        place.fault("does not say how many records.", "Write 'size: {records: 400}'.")
-    return None
+    return {key: float(share) for key, share in given.items()}
+
+
+def read_in_units(found: Found) -> bool:
+    """Say whether effects are in natural units."""
+    return "in" in found and found["in"].choice(("units",)) is not None
+
+
+def read_terms(found: Found, burdens: Mapping[str, Burden], size: Size | None) -> Terms:
+    """Return the number of records, one at a target, and what is lost and added."""
+    return Terms(
+        records=(size and size.records) or 1,
+        usable=read_usable(found),
+        burdens=burdens,
+        overhead=read_surcharge(found, "overhead"),
+        contingency=read_surcharge(found, "contingency"),
+    )
 
 
 def read_usable(found: Found) -> Fraction:
@@ -141,17 +197,12 @@ def read_clusters(place: Located) -> ClusterDesign:
 
 def read_tolerance(found: Found) -> Tolerance:
     """Return what the user will put up with."""
-    keys = ("least_reliability", "bias", "first_stage_F")
-    given = found["tolerance"].entries(keys) if "tolerance" in found else {}
-    least = (
-        given["least_reliability"].number(least=0, most=1) if "least_reliability" in given else None
-    )
-    bias = given["bias"].number(least=0) if "bias" in given else None
-    strength = given["first_stage_F"].number(least=0) if "first_stage_F" in given else None
+    given = found["tolerance"].entries(MOST_TOLERATED) if "tolerance" in found else {}
+    bounds = {key: place.number(least=0, most=MOST_TOLERATED[key]) for key, place in given.items()}
     return Tolerance(
-        least_reliability=least,
-        bias=None if bias is None else float(bias),
-        first_stage_f=None if strength is None else float(strength),
+        least_reliability=bounds.get("least_reliability"),
+        bias=bounds.get("bias"),
+        first_stage_f=bounds.get("first_stage_F"),
     )
 
 

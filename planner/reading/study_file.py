@@ -21,10 +21,15 @@ from costs.reading import (
 )
 from costs.tables import MEANT
 from planner.reading.settings import (
+    SIZE_KEYS,
+    SIZES,
+    TARGETS,
     read_budget,
     read_design_effect,
     read_frame_size,
+    read_in_units,
     read_routes,
+    read_size,
     read_terms,
     read_text,
     read_tolerance,
@@ -42,7 +47,9 @@ from planner.reading.whole import (
     check_measurable,
     check_priced,
     check_strengths,
+    check_target,
     check_timing,
+    check_units,
     read_effect,
     read_selected,
 )
@@ -78,7 +85,7 @@ LATER_KEYS = ("effects", "doubts", "rivals", "routes_wanted", "spare", "subgroup
 WANTED = {
     "effect": "Write 'effect: {treatment: …, outcome: …}'.",
     "variables": "List the variables, each with what causes it and how it is measured.",
-    "size": "Write 'size: {records: 400}', the number of complete records.",
+    "size": SIZES,
 }
 
 
@@ -119,6 +126,8 @@ def read_all(path: Path, prices: Sequence[Path] | None, faults: Faults) -> Study
     study = study_of(file, found, lists, parts)
     if study is not None and not faults:
         check_countable(study, found["size"], parts.listed)
+        if study.size.is_target:
+            check_target(study, next(found[key] for key in TARGETS if key in found))
     return study
 
 
@@ -138,13 +147,14 @@ def collector_paused() -> Iterator[None]:
 
 
 def entries_of(tree: Located) -> dict[str, Located]:
-    """Return the keys of a study file, and those of its fieldwork beside them."""
+    """Return the keys of a study file, and those of its fieldwork and size beside them."""
     found = tree.entries(KEYS, LATER_KEYS, MEANT)
     for key, mend in WANTED.items():
         if key not in found and tree.is_mapping:
             tree.below(key).fault("is missing.", mend)
-    if "fieldwork" in found:
-        found |= found["fieldwork"].entries(FIELDWORK_KEYS)
+    for key, keys in (("fieldwork", FIELDWORK_KEYS), ("size", SIZE_KEYS)):
+        if key in found:
+            found |= found[key].entries(keys)
     return found
 
 
@@ -223,10 +233,14 @@ def study_of(
     effect = None
     if "effect" in found and drawn:
         effect = read_effect(found["effect"], drawn, prices.ways if parts.whole else drawn)
-    terms = read_terms(found, parts.burdens)
+    in_units = read_in_units(found)
+    if effect is not None and in_units:
+        check_units(found["in"], effect, drawn)
+    size = read_size(found, in_units=in_units)
+    terms = read_terms(found, parts.burdens, size)
     settings = read_settings(found, lists, drawn)
     title, unit = read_text(found, "title"), read_text(found, "unit")
-    if effect is None or terms is None:
+    if effect is None or size is None:
         return None
     return Study(
         title=title or f"What is the effect of {effect.treatment} on {effect.outcome}?",
@@ -235,6 +249,7 @@ def study_of(
         variables={name: each.variable for name, each in drawn.items()},
         hidden_causes=parts.hidden_causes,
         prices=prices,
+        size=size,
         terms=terms,
         default_strength=parts.default_strength,
         waves=parts.waves,

@@ -46,6 +46,8 @@ class DrawnVariable:
     """Its ways, as far as the study file gives them."""
     measurable: bool | None
     """What ``measurable:`` says; None where it is not there."""
+    has_spread: bool
+    """Its SD or share is given, rightly or not."""
 
 
 def read_variables(place: Located, waves: Mapping[str, int]) -> dict[str, DrawnVariable]:
@@ -83,6 +85,7 @@ def read_variable(name: str, place: Located, waves: Mapping[str, int]) -> DrawnV
         when_place=found.get("when"),
         listed=read_ways(name, place, found),
         measurable=found["measurable"].flag() if "measurable" in found else None,
+        has_spread="sd" in found or "share" in found,
     )
 
 

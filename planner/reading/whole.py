@@ -1,6 +1,7 @@
 """What can be said only of the study as a whole: names, circles, timing, prices, strengths."""
 
 from collections.abc import Collection, Iterable, Mapping, Sequence
+from decimal import ROUND_FLOOR, Context
 from fractions import Fraction
 from graphlib import TopologicalSorter
 from math import ceil, floor, log10, sqrt
@@ -10,8 +11,19 @@ from costs.located import Located, shortened
 from costs.prices import Name, PriceList
 from costs.reading import Listed
 from costs.tally import Overflow, Tally
+from planner.linear import (
+    LinearModel,
+    coefficients_of,
+    is_learnable,
+    largest_effect,
+    linear_model,
+    missing_in_words,
+    outcome_explained,
+    units_per_unit,
+    why_zero,
+)
 from planner.reading.variables import DrawnVariable
-from planner.strengths import explained_shares, loadings
+from planner.strengths import explained_shares
 from planner.study import Effect, HiddenCause, Range, Study, shown_time
 
 __all__ = [
@@ -20,7 +32,9 @@ __all__ = [
     "check_measurable",
     "check_priced",
     "check_strengths",
+    "check_target",
     "check_timing",
+    "check_units",
     "read_effect",
     "read_selected",
 ]
@@ -28,6 +42,8 @@ __all__ = [
 Drawn = Mapping[str, DrawnVariable]
 ALMOST_ALL = 1 - 1e-9
 """A share of explained variance above this counts as all of it: rounding forgiven."""
+RECORDS_INSTEAD = "size the study by its records, as in 'size: {records: 400}'"
+THREE_DIGITS = Context(prec=3, rounding=ROUND_FLOOR)
 
 
 def read_effect(place: Located, drawn: Drawn, measurable: Collection[str]) -> Effect | None:
@@ -158,14 +174,13 @@ def check_strengths(
     int
         Variables for which that would take too long to say.
     """
-    causes = {name: coefficients(each, drawn, default) for name, each in drawn.items()}
-    for cause in hidden:
-        both = likely(cause.strength)
-        # An arrow without a strength of its own takes the default, and these arrows are no others.
-        pair = (likely(default), likely(default)) if both is None else loadings(both)
-        causes[cause.name] = {}
-        for name, loading in zip(cause.of, pair, strict=True):
-            causes[name] = {**causes[name], cause.name: loading}
+    variables = {name: each.variable for name, each in drawn.items()}
+    every = coefficients_of(variables, hidden, default)
+    # A cause that is no variable has been told of; none of the strengths is taken at its word then.
+    causes = {
+        name: into if into.keys() <= every.keys() else dict.fromkeys(c for c in into if c in every)
+        for name, into in every.items()
+    }
     names = [cause.name for cause in hidden] + list(order)
     shares = explained_shares(causes, names)
     for name, share in shares.items():
@@ -196,20 +211,56 @@ def check_countable(study: Study, size: Located, every: Iterable[Listed]) -> Non
         )
 
 
-def coefficients(
-    each: DrawnVariable, drawn: Drawn, default: Range | None
-) -> Mapping[str, float | None]:
-    """Return the likely strength of each arrow into a variable; None where it has none.
+def check_units(place: Located, effect: Effect, drawn: Drawn) -> None:
+    """Say which end of the effect has no SD, and so no natural units to show effects in."""
+    lacking = [n for n in (effect.treatment, effect.outcome) if not drawn[n].has_spread]
+    if lacking:
+        verb = "has" if len(lacking) == 1 else "have"
+        named = " and ".join(f"'{shortened(name)}'" for name in lacking)
+        place.fault(
+            f"asks for natural units, but {named} {verb} neither 'sd' nor 'share'.",
+            "Write 'sd: 12.5' there, or 'share: 0.3' for a yes/no variable.",
+        )
 
-    A cause that is no variable has been told of; none of the strengths is taken at its word then.
+
+def check_target(study: Study, place: Located) -> None:
+    """Say what keeps the number of records from being worked out, if there is an effect to learn.
+
+    That is strengths that are missing, an effect of zero, or no room for the effect to be detected.
     """
-    causes = each.variable.causes
-    known = {cause: strength for cause, strength in causes.items() if cause in drawn}
-    if len(known) < len(causes):
-        return dict.fromkeys(known)
-    return {cause: likely(strength or default) for cause, strength in known.items()}
+    (effect,) = study.effects
+    if not is_learnable(study, effect):
+        return
+    if missing := missing_in_words(study, effect):
+        place.fault(
+            f"cannot be worked out: {missing}.",
+            "Give each a strength in 'caused_by' or 'hidden_common_causes', write"
+            f" 'default_strength: weak', or {RECORDS_INSTEAD}.",
+        )
+        return
+    model = linear_model(study, effect)
+    assert model is not None, "no strength is missing"
+    if model.effect:
+        check_room(study, effect, model, place)
+    else:
+        place.fault(
+            f"finds no effect to size for: {why_zero(model, effect)}.",
+            f"Correct the strengths along these paths, or {RECORDS_INSTEAD}.",
+        )
 
 
-def likely(strength: Range | None) -> float | None:
-    """Return the single number of a range."""
-    return None if strength is None else strength.likely
+def check_room(study: Study, effect: Effect, model: LinearModel, place: Located) -> None:
+    """Say whether the effect to be detected leaves the outcome no noise."""
+    share = outcome_explained(model, effect.outcome)
+    if study.size.detect is None or share is None or share <= ALMOST_ALL:
+        return
+    largest = largest_effect(model, effect, ALMOST_ALL)
+    mend = "Write 'detect: implied', or correct the strengths."
+    if largest is not None:
+        largest *= units_per_unit(study, effect)
+        mend = f"Write {float(THREE_DIGITS.create_decimal_from_float(largest)):g} or less."
+    place.fault(
+        f"is an effect with which '{shortened(effect.outcome)}' is explained to"
+        f" {100 * share:.1f} % by its causes; less than 100 % is possible.",
+        mend,
+    )

@@ -10,7 +10,7 @@ import pytest
 from costs.faults import FaultyInput
 from costs.prices import Batch, Burden, Component, Way
 from planner import read_study
-from planner.study import ClusterDesign, Effect, HiddenCause, PriceSource, Range, Tolerance
+from planner.study import ClusterDesign, Effect, HiddenCause, PriceSource, Range, Size, Tolerance
 from tests.conftest import STUDY
 
 EVERYTHING = """\
@@ -122,12 +122,13 @@ def test_every_key_is_read(write: Callable[..., Path]) -> None:
         "minutes": Burden(limit=Fraction(30), price=Fraction("1.1")),
         "blood_ml": Burden(label="blood", limit=Fraction(10), care=True),
     }
+    assert study.size == Size(records=400, confidence=0.9)
     assert (study.terms.records, study.terms.usable) == (400, Fraction("0.8"))
     assert (study.terms.overhead, study.terms.contingency) == (Fraction(1, 4), Fraction(1, 20))
     assert (study.budget, study.frame_size) == (120_000, 2500)
     assert study.design_effect == {"conditioning": 1.3}
     assert study.tolerance == Tolerance(
-        least_reliability=Fraction("0.6"), bias=0.15, first_stage_f=20
+        least_reliability=Fraction("0.6"), bias=Fraction("0.15"), first_stage_f=Fraction(20)
     )
     assert study.default_strength == Range(low=0.1, likely=0.1, high=0.1)
     assert study.routes == ("conditioning", "mechanism")
@@ -153,6 +154,139 @@ def test_design_effects_take_three_forms(
     text: str, effect: object, write: Callable[..., Path]
 ) -> None:
     assert read_study(write(f"{STUDY}fieldwork: {{{text}}}\n")).design_effect == effect
+
+
+SIZED = """\
+effect: {treatment: x, outcome: y}
+size: {detect: implied}
+variables:
+  x: {caused_by: {c: 0.2}, sd: 2, per_unit: 1}
+  m: {caused_by: {x: 0.5}, per_unit: 1}
+  y: {caused_by: {x: 0.3, m: -0.4, c: 0.3}, share: 0.2, per_unit: 1}
+  c: {per_unit: 1}
+hidden_common_causes: [{of: [x, y], strength: 0.16}]
+"""
+"""Every strength is given; the effect is 0.3 - 0.5 · 0.4 = 0.1."""
+
+
+@pytest.mark.parametrize(
+    ("text", "size"),
+    [
+        ("records: 40", Size(records=40)),
+        ("half_width: 0.05, confidence: 0.9", Size(half_width=0.05, confidence=0.9)),
+        ("detect: 0.12, power: 0.9", Size(detect=0.12, power=0.9)),
+        ("detect: 0.02, in: units", Size(detect=0.02, in_units=True)),
+        ("detect: implied, power: 0.0251", Size(implied=True, power=0.0251)),
+        ("spend: 60000.0001", Size(spend=Fraction("60000.0001"))),
+        ("spend: 0", Size(spend=Fraction(0))),
+    ],
+)
+def test_sizes_take_four_forms(text: str, size: Size, write: Callable[..., Path]) -> None:
+    study = read_study(write(SIZED.replace("{detect: implied}", f"{{{text}}}")))
+    assert study.size == size
+    assert study.terms.records == (size.records or 1)
+    assert study.size.is_target == (size.records is None)
+
+
+UNSIZED = {
+    "paths that cancel": (
+        ("x: 0.3, m: -0.4", "x: 0.2, m: -0.4"),
+        "study.yaml:2: size.detect: finds no effect to size for: the directed paths from x to y"
+        " cancel.\n    Correct the strengths along these paths, or size the study by its records, as"
+        " in 'size: {records: 400}'.",
+    ),
+    "paths that lead nowhere": (
+        ("x: 0.3, m: -0.4", "x: 0, m: 0", "detect: implied", "spend: 9"),
+        "study.yaml:2: size.spend: finds no effect to size for: each directed path from x to y has an"
+        " arrow of strength 0.\n    Correct the strengths along these paths, or size the study by its"
+        " records, as in 'size: {records: 400}'.",
+    ),
+    # Three times the effect: 9 · 0.13 + 3 · 0.044 + 0.25; the share is 1 at 2.2387 times 0.1.
+    "too large an effect": (
+        ("detect: implied", "detect: 0.3"),
+        "study.yaml:2: size.detect: is an effect with which 'y' is explained to 155.2 % by its causes;"
+        " less than 100 % is possible.\n    Write 0.223 or less.",
+    ),
+    # A probability of 0.2 has an SD of 0.4, x one of 2: 0.3 outcome SDs per SD are 0.06.
+    "too large an effect in units": (
+        ("detect: implied", "detect: 0.06, in: units"),
+        "study.yaml:2: size.detect: is an effect with which 'y' is explained to 155.2 % by its causes;"
+        " less than 100 % is possible.\n    Write 0.0447 or less.",
+    ),
+    # What c explains alone, 1.21, is too much: it takes an effect against it to leave noise.
+    "too small an effect": (
+        (
+            "detect: implied",
+            "detect: 0.1",
+            "{c: 0.2}",
+            "{c: 0.8}",
+            "x: 0.3, m: -0.4, c: 0.3",
+            "x: -0.5, c: 1.1",
+            "strength: 0.16",
+            "strength: 0",
+        ),
+        "study.yaml:2: size.detect: is an effect with which 'y' is explained to 104.4 % by its causes;"
+        " less than 100 % is possible.\n    Write 'detect: implied', or correct the strengths.",
+    ),
+    "strengths at fault are told of alone": (
+        ("detect: implied", "detect: 3", "m: -0.4", "m: -1.4"),
+        "study.yaml:6: variables.y: is explained to 170.4 % by its causes; less than 100 % is"
+        " possible.\n    Multiply the strengths of all arrows into it by 0.766 or less.",
+    ),
+    "strengths missing in numbers": (
+        (
+            "{c: 0.2}",
+            f"[{', '.join(f'v{i}' for i in range(14))}]",
+            "  c:",
+            "".join(f"  v{i}: {{measurable: no}}\n" for i in range(14)) + "  c:",
+        ),
+        "study.yaml:2: size.detect: cannot be worked out: 14 strengths are missing: v0 → x, v1 → x, v2 → x,"
+        " v3 → x, v4 → x, v5 → x, v6 → x, v7 → x, v8 → x, v9 → x, v10 → x, v11 → x and 2 more.\n"
+        "    Give each a strength in 'caused_by' or 'hidden_common_causes', write 'default_strength:"
+        " weak', or size the study by its records, as in 'size: {records: 400}'.",
+    ),
+}
+
+
+@pytest.mark.parametrize("name", UNSIZED)
+def test_a_size_that_cannot_be_worked_out_says_why(name: str, write: Callable[..., Path]) -> None:
+    edits, message = UNSIZED[name]
+    text = SIZED
+    for old, new in zip(edits[::2], edits[1::2], strict=True):
+        assert old in text
+        text = text.replace(old, new)
+    assert faults_of(write(text)) == message
+
+
+def test_the_largest_effect_that_is_named_fits(write: Callable[..., Path]) -> None:
+    for text in ("detect: 0.223", "detect: 0.0447, in: units"):
+        assert read_study(write(SIZED.replace("detect: implied", text))).size.detect
+
+
+@pytest.mark.parametrize(
+    "edits",
+    [
+        # No strength hangs on them: neither y nor m comes before x, and m is on no path.
+        ("m: -0.4, ", "", "m: {caused_by: {x: 0.5}", "m: {caused_by: [x]"),
+        # Without a directed path the effect is zero, and there is no other answer.
+        ("x: 0.3, m: -0.4, c: 0.3", "c: "),
+        # Selection after the treatment leaves no route to it.
+        ("{x: 0.5}", "[x]", "hidden", "selected_by: m\nhidden"),
+    ],
+)
+def test_strengths_are_missed_only_where_an_answer_hangs_on_them(
+    edits: tuple[str, ...], write: Callable[..., Path]
+) -> None:
+    text = SIZED
+    for old, new in zip(edits[::2], edits[1::2], strict=True):
+        assert old in text
+        text = text.replace(old, new)
+    assert read_study(write(text)).size.implied
+
+
+def test_a_default_serves_at_a_target(write: Callable[..., Path]) -> None:
+    text = SIZED.replace("{c: 0.2}", "[c]").replace(", strength: 0.16", "")
+    assert read_study(write(f"{text}default_strength: weak\n")).size.implied
 
 
 def test_what_is_left_out_has_its_default(write: Callable[..., Path]) -> None:
@@ -285,12 +419,107 @@ MESSAGES = {
         "study.yaml:12: variables.y.ways.ask.on: is reserved: its meaning is fixed, but it cannot be"
         " used yet.\n    Leave it out for now.",
     ),
-    "a target": (
-        ("{records: 40}", "{detect: implied, power: 0.8}"),
-        "study.yaml:4: size.detect: asks for a stated precision, but only 'records' is possible yet.\n"
-        "    Write 'size: {records: 400}', the number of complete records.\n"
-        "study.yaml:4: size.power: asks for a stated precision, but only 'records' is possible yet.\n"
-        "    Write 'size: {records: 400}', the number of complete records.",
+    "two sizes": (
+        ("{records: 40}", "{half_width: 0.1, records: 40, spend: 9}"),
+        "study.yaml:4: size.records: stands beside 'half_width', which sizes the study already.\n"
+        "    Keep one of the two.\n"
+        "study.yaml:4: size.spend: stands beside 'half_width', which sizes the study already.\n"
+        "    Keep one of the two.",
+    ),
+    "a size that says nothing": (
+        ("{records: 40}", "{power: 0.8}"),
+        "study.yaml:4: size: does not say how large the study is to be.\n"
+        "    Write 'size: {records: 400}', or {half_width: 0.05}, {detect: 0.12, power: 0.8} or"
+        " {spend: 60000}.",
+    ),
+    "a size without a name": (
+        ("{records: 40}", "40"),
+        "study.yaml:4: size: is '40', where 'name: …' entries are wanted.\n"
+        "    Write one entry a line, indented below.",
+    ),
+    "power with nothing to detect": (
+        ("{records: 40}", "{half_width: 0.1, power: 0.8}"),
+        "study.yaml:4: size.power: goes with 'detect' only.\n"
+        "    Leave it out, or size the study by an effect to detect in place of 'half_width'.",
+    ),
+    "power that takes no study": (
+        ("{records: 40}", "{detect: 0.1, confidence: 0.9, power: 0.05}"),
+        "study.yaml:4: size.power: is '0.05', but chance alone detects with 0.05 at a confidence of"
+        " 0.9.\n    Write a number that is above 0.05.",
+    ),
+    "numbers of a size out of bounds": (
+        ("{records: 40}", "{half_width: 0, confidence: 95, in: cm}"),
+        "study.yaml:4: size.half_width: is '0', but must be above 0.\n"
+        "    Write a number that is above 0.\n"
+        "study.yaml:4: size.confidence: is '95', but must be below 1.\n"
+        "    Write a number that is below 1.\n"
+        "study.yaml:4: size.in: is 'cm'.\n"
+        "    Known here: units.",
+    ),
+    "an effect with a sign": (
+        ("{records: 40}", "{detect: -0.1, power: 1}"),
+        "study.yaml:4: size.detect: is '-0.1', but must be above 0.\n"
+        "    Write a number that is above 0.\n"
+        "study.yaml:4: size.power: is '1', but must be below 1.\n"
+        "    Write a number that is below 1.",
+    ),
+    "an effect in an unknown word": (
+        ("{records: 40}", "{detect: implyed}"),
+        "study.yaml:4: size.detect: is 'implyed'.\n    Did you mean 'implied'?",
+    ),
+    "an effect left empty": (
+        ("{records: 40}", "{detect: }"),
+        "study.yaml:4: size.detect: is empty, where a number is wanted.\n    Write it like 12.50.",
+    ),
+    "money with too many decimals": (
+        ("{records: 40}", "{spend: 0.00001}"),
+        "study.yaml:4: size.spend: is '0.00001', with more than 4 decimals.\n"
+        "    Round it to 4 decimals.",
+    ),
+    "natural units without an SD": (
+        ("records: 40}", "records: 40, in: units}"),
+        "study.yaml:4: size.in: asks for natural units, but 'x' and 'y' have neither 'sd' nor"
+        " 'share'.\n    Write 'sd: 12.5' there, or 'share: 0.3' for a yes/no variable.",
+    ),
+    "natural units of one end": (
+        ("{records: 40}", "{records: 0, in: units}", "  x:\n", "  x:\n    share: 0.3\n"),
+        "study.yaml:4: size.records: is '0', but must be 1 or more.\n"
+        "    Write a number that is 1 or more.\n"
+        "study.yaml:4: size.in: asks for natural units, but 'y' has neither 'sd' nor 'share'.\n"
+        "    Write 'sd: 12.5' there, or 'share: 0.3' for a yes/no variable.",
+    ),
+    "an SD at fault is told once": (
+        (
+            "{records: 40}",
+            "{records: 4, in: units}",
+            "  x:\n",
+            "  x:\n    sd: 1\n",
+            "  y:\n",
+            "  y:\n    sd: 0\n",
+        ),
+        "study.yaml:11: variables.y.sd: is '0', but must be above 0.\n"
+        "    Write a number that is above 0.",
+    ),
+    "a target without strengths": (
+        (
+            "{records: 40}",
+            "{half_width: 0.1}",
+            "c: -0.2}",
+            "c: -0.2, d: }",
+            "size:",
+            "hidden_common_causes: [[x, c]]\nsize:",
+            "  c: {",
+            "  d: {measurable: no}\n  c: {",
+        ),
+        "study.yaml:5: size.half_width: cannot be worked out: 3 strengths are missing: c → x, (hidden"
+        " common cause of x and c), d → y.\n"
+        "    Give each a strength in 'caused_by' or 'hidden_common_causes', write 'default_strength:"
+        " weak', or size the study by its records, as in 'size: {records: 400}'.",
+    ),
+    "other faults come before a target's": (
+        ("{records: 40}", "{half_width: 0.1}", "limit: 20", "limit: many"),
+        "study.yaml:17: burdens.minutes.limit: is 'many', which is no number.\n"
+        "    Write it like 12.50.",
     ),
     "half a record": (
         ("records: 40}", "records: 40.5}"),
@@ -305,7 +534,8 @@ MESSAGES = {
     "no size": (
         ("size: {records: 40}\n", ""),
         "study.yaml:1: size: is missing.\n"
-        "    Write 'size: {records: 400}', the number of complete records.",
+        "    Write 'size: {records: 400}', or {half_width: 0.05}, {detect: 0.12, power: 0.8} or"
+        " {spend: 60000}.",
     ),
     "a cause after its effect": (
         ("  x:\n", "  x:\n    when: 2\n", "  y:\n", "  y:\n    when: 1\n"),

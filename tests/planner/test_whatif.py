@@ -1,6 +1,7 @@
 """What-if options: from one study to another."""
 
 from collections.abc import Callable
+from dataclasses import replace
 from fractions import Fraction
 from pathlib import Path
 
@@ -9,7 +10,7 @@ import pytest
 from costs.faults import FaultyInput
 from costs.prices import Way
 from planner import read_study, whatif
-from planner.study import Study
+from planner.study import Size, Study
 
 STUDY = """\
 effect: {treatment: x, outcome: y}
@@ -76,10 +77,26 @@ def test_what_is_held_is_free_but_no_better_than_it_is(study: Study) -> None:
 
 def test_records_and_routes_can_be_set(study: Study) -> None:
     assert whatif.with_records(study, 25).terms.records == 25
+    assert whatif.with_records(study, 25).size == Size(records=25)
     assert whatif.with_routes(study, ["mechanism", "conditioning"]).routes == (
         "conditioning",
         "mechanism",
     )
+
+
+@pytest.mark.parametrize(
+    "size",
+    [
+        Size(half_width=0.1, confidence=0.9, in_units=True),
+        Size(detect=0.1, confidence=0.9, in_units=True),
+        Size(implied=True, confidence=0.9, in_units=True),
+        Size(spend=Fraction(9), confidence=0.9, in_units=True),
+    ],
+)
+def test_records_take_the_place_of_a_target(size: Size, study: Study) -> None:
+    changed = whatif.with_records(replace(study, size=size), 25)
+    assert changed.size == Size(records=25, confidence=0.9, in_units=True)
+    assert changed.terms.records == 25
 
 
 @pytest.mark.parametrize(
