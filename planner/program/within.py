@@ -2,9 +2,13 @@
 
 from dataclasses import dataclass
 from fractions import Fraction
+from typing import TYPE_CHECKING
 
 from costs.bill import Bill
 from costs.prices import PriceList, Terms
+
+if TYPE_CHECKING:
+    from planner.precision import Demand
 
 __all__ = ["Within"]
 
@@ -19,6 +23,10 @@ class Within:
     """With the limits of the burdens."""
     budget: Fraction | None = None
     frame_size: int | None = None
+    spend: Fraction | None = None
+    """The money that is to buy as narrow an interval as it can."""
+    demand: "Demand | None" = None
+    """What is demanded of the estimate; None where the strengths are not known."""
 
     def broken(self, bill: Bill) -> tuple[str, ...]:
         """Return the names of the limits that a bill breaks."""
