@@ -19,7 +19,7 @@ from fractions import Fraction
 from costs.prices import Component, PriceList, Terms, Way
 from planner.plan import RouteAnswer
 from planner.planning import recommend
-from planner.study import Effect, HiddenCause, Study, Variable
+from planner.study import Effect, HiddenCause, Size, Study, Variable
 
 
 def sparse_study(size: int, seed: int) -> Study:
@@ -53,6 +53,7 @@ def sparse_study(size: int, seed: int) -> Study:
         variables={n: Variable(name=n, causes=dict.fromkeys(sorted(causes[n]))) for n in names},
         hidden_causes=(HiddenCause(of=(x, y), name="u"),) if seed % 2 else (),
         prices=PriceList(ways=ways, components={}),
+        size=Size(records=100),
         terms=Terms(records=100),
         routes=("conditioning", "instrument", "mechanism"),
     )
@@ -81,6 +82,7 @@ def lossy_study(chains: int, seed: int) -> Study:
         effects=(Effect(treatment="x", outcome="y"),),
         variables={n: Variable(name=n, causes=dict.fromkeys(c)) for n, c in causes.items()},
         prices=PriceList(ways=ways, components={"base": base}),
+        size=Size(records=400),
         terms=Terms(records=400),
         routes=("conditioning", "instrument", "mechanism"),
     )
