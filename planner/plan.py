@@ -3,12 +3,14 @@
 from collections.abc import Mapping
 from dataclasses import dataclass
 from fractions import Fraction
+from math import isfinite
 from typing import Literal
 
 from costs.bill import Bill
 from costs.money import plain_number
 from planner.findings import Reason
-from planner.study import Effect, Study
+from planner.precision import Precision
+from planner.study import Effect, Size, Study
 from planner.version import VERSION
 from planner.words import estimand, sentence
 
@@ -53,6 +55,13 @@ class Plan:
     instruments: tuple[str, ...]
     mediators: tuple[str, ...]
     buy: Buy
+    precision: Precision | None
+    """What it achieves; None where the strengths are not known."""
+    extras: Mapping[str, Fraction | None]
+    """Measured variables that validity does not need, with what the same precision would cost more
+    without each; None where a limit would break without it."""
+    narrowest: float | None
+    """Where money is given: no study within the limits has a smaller half-width."""
     needed: Mapping[str, Reason]
     """For each measured variable, what would go wrong without it."""
     left_out: Mapping[str, Reason]
@@ -136,7 +145,7 @@ class Recommendation:
             "title": study.title,
             "unit": study.unit,
             "currency": study.currency,
-            "size": {"records": study.terms.records},
+            "size": size_values(study.size),
             "status": self.status,
             "buy": None if self.buy is None else buy_values(self.buy, study),
             "effects": [effect_values(each, study) for each in self.effects],
@@ -207,11 +216,53 @@ def plan_values(plan: Plan, route: str, effect: Effect, study: Study) -> dict[st
             "mediators": list(plan.mediators),
         },
         "buy": buy_values(plan.buy, study),
-        "precision": None,
+        "precision": None if plan.precision is None else precision_values(plan),
+        "extras": [
+            {"variable": name, "saves": None if saves is None else plain_number(saves)}
+            for name, saves in plan.extras.items()
+        ],
         "needed": each(plan.needed),
         "left_out": each(plan.left_out),
         "never": list(plan.never),
     }
+
+
+def precision_values(plan: Plan) -> dict[str, object]:
+    """Return what a plan achieves; a half-width without end is null."""
+    precision = plan.precision
+    assert precision is not None, "precision was worked out"
+    values: dict[str, object] = {
+        "effect": precision.effect,
+        "limit": precision.limit,
+        "variance": precision.variance,
+        "bias_bound": precision.bias_bound,
+        "bias_sources": dict(precision.bias_sources),
+        "half_width": precision.half_width if isfinite(precision.half_width) else None,
+        "power": precision.power,
+        "coverage": precision.coverage,
+        "first_stage_F": precision.first_stage_f,
+    }
+    if plan.narrowest is not None:
+        values["least_half_width"] = plan.narrowest
+    return values
+
+
+def size_values(size: Size) -> dict[str, object]:
+    """Return how large the study is to be, as a study file says it."""
+    values: dict[str, object] = {
+        "records": size.records,
+        "half_width": size.half_width,
+        "detect": "implied" if size.implied else size.detect,
+        "spend": None if size.spend is None else plain_number(size.spend),
+    }
+    values = {key: value for key, value in values.items() if value is not None}
+    if "detect" in values:
+        values["power"] = size.power
+    if size.confidence != Size().confidence:
+        values["confidence"] = size.confidence
+    if size.in_units:
+        values["in"] = "units"
+    return values
 
 
 def buy_values(buy: Buy, study: Study) -> dict[str, object]:

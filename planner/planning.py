@@ -8,9 +8,11 @@ from costs.faults import Fault, FaultyInput, Spot
 from costs.prices import shown_name
 from costs.tally import Overflow
 from planner.claims import Claim
+from planner.deadline import Deadline
 from planner.diagram import Diagram
 from planner.findings import Finding, Reason, reason_of
-from planner.limits import exceeded, limits_of, within_limits
+from planner.limits import demand_of, exceeded, limits_of, within_limits
+from planner.linear import diagram_of
 from planner.plan import (
     Buy,
     EffectAnswer,
@@ -20,12 +22,13 @@ from planner.plan import (
     RouteAnswer,
     StudyStatus,
 )
+from planner.precision import Demand
 from planner.program import Choice, NothingFound
 from planner.routes import ROUTES
-from planner.search import Answer, Deadline, cheapest
+from planner.search import Answer, cheapest
 from planner.study import Effect, Study
 
-__all__ = ["NEVER", "diagram_of", "recommend", "tell_nobody"]
+__all__ = ["NEVER", "recommend", "tell_nobody"]
 
 NEVER = frozenset(
     {"on_causal_path", "below_causal_path", "after_treatment", "carried", "opens", "cuts_link"}
@@ -40,17 +43,6 @@ def tell_nobody(_: str) -> None:
     """Tell nobody what is being worked on."""
 
 
-def diagram_of(study: Study) -> Diagram:
-    """Return the study's diagram, hidden common causes as nodes of their own."""
-    causes: dict[str, list[str]] = {
-        name: list(variable.causes) for name, variable in study.variables.items()
-    }
-    for hidden in study.hidden_causes:
-        for name in hidden.of:
-            causes[name].append(hidden.name)
-    return Diagram.of(causes | {hidden.name: [] for hidden in study.hidden_causes})
-
-
 @dataclass(frozen=True, kw_only=True, slots=True)
 class Question:
     """One effect of a study, and what is the same for all its routes."""
@@ -58,6 +50,8 @@ class Question:
     study: Study
     effect: Effect
     diagram: Diagram
+    demand: Demand | None
+    """What is demanded of the estimate; None where precision cannot be worked out."""
     seconds: float
     report: Report
 
@@ -94,6 +88,7 @@ def recommend(
             study=study,
             effect=effect,
             diagram=diagram_of(study),
+            demand=demand_of(study, effect),
             seconds=seconds,
             report=report,
         )
@@ -142,15 +137,15 @@ def effect_answer(question: Question) -> tuple[EffectAnswer, Buy | None]:
     question.report("all routes")
     best: Answer | NothingFound = NothingFound(proved=True)
     if open_claims:
-        within = within_limits(question.study)
+        within = within_limits(question.study, demand=question.demand)
         best = cheapest([Choice(open_claims)], within, Deadline(question.seconds))
     routes = tuple(closed[claim.route] or open_route(question, claim, best) for claim in claims)
     plans = {each.route: each.plan for each in routes if each.plan is not None}
-    recommended = min(plans, key=lambda route: preference(plans[route].buy), default=None)
+    recommended = min(plans, key=lambda route: preference(plans[route]), default=None)
     if isinstance(best, Answer) and best.proved:
         recommended = best.opened[0][0].route
-        least = min(plan.buy.bill.total for plan in plans.values())
-        assert least == best.bill.total, "no search of one route beats the one over all"
+        least = min(preference(plan)[0] for plan in plans.values())
+        assert least == worth(best), "no search of one route beats the one over all"
     buy = None
     if recommended is not None:
         buy = plans[recommended].buy
@@ -159,9 +154,23 @@ def effect_answer(question: Question) -> tuple[EffectAnswer, Buy | None]:
     return EffectAnswer(effect=question.effect, recommended=recommended, routes=routes), buy
 
 
-def preference(buy: Buy) -> tuple[Fraction, int, list[str]]:
-    """Return what decides between two plans: money, then fewer variables, then smaller names."""
-    return buy.bill.total, len(buy.measure), sorted(buy.measure)
+def preference(plan: Plan) -> tuple[float | Fraction, Fraction, int, list[str]]:
+    """Return what decides between two plans.
+
+    Money, or the half-width that the money buys; then money, fewer variables, smaller names.
+    """
+    buy = plan.buy
+    first: float | Fraction = buy.bill.total
+    if plan.narrowest is not None and plan.precision is not None:
+        first = plan.precision.half_width
+    return first, buy.bill.total, len(buy.measure), sorted(buy.measure)
+
+
+def worth(answer: Answer) -> float | Fraction:
+    """Return what decides between two answers first: see ``preference``."""
+    if answer.narrowest is not None and answer.precision is not None:
+        return answer.precision.half_width
+    return answer.bill.total
 
 
 def overall_bound(best: Answer | NothingFound, routes: Iterable[RouteAnswer]) -> Fraction:
@@ -226,8 +235,12 @@ def better(one: Answer | None, other: Answer | NothingFound) -> Answer | Nothing
     """Return the cheaper of two answers to the same question, with the higher of their bounds."""
     if one is None or isinstance(other, NothingFound):
         return one or other
+    best = min(one, other, key=worth)
     bound = max(one.lower_bound, other.lower_bound)
-    return replace(min(one, other, key=lambda each: each.bill.total), lower_bound=bound)
+    narrowest = None
+    if one.narrowest is not None and other.narrowest is not None:
+        narrowest = max(one.narrowest, other.narrowest)
+    return replace(best, lower_bound=min(bound, best.bill.total), narrowest=narrowest)
 
 
 def feasible_route(question: Question, claim: Claim, answer: Answer) -> RouteAnswer:
@@ -246,7 +259,8 @@ def search(
     question: Question, claim: Claim, deadline: Deadline, lifted: Iterable[str] = ()
 ) -> Answer | NothingFound:
     """Return the cheapest purchase for one claim, some limits lifted."""
-    return cheapest([Choice((claim,))], within_limits(question.study, lifted), deadline)
+    within = within_limits(question.study, lifted, question.demand, claim.route)
+    return cheapest([Choice((claim,))], within, deadline)
 
 
 def route_beyond_limits(
@@ -263,32 +277,37 @@ def route_beyond_limits(
         Whether it is sure that there is no plan within the limits.
     """
     question.report(f"{ROUTES[claim.route].words.title}, beyond the limits")
-    limits = limits_of(question.study)
+    study, demand = question.study, question.demand
+    limits = limits_of(study, demand, claim.route)
     alone = [search(question, claim, deadline, [limit]) for limit in limits]
     helping = [found for found in alone if isinstance(found, Answer)]
     for found in helping:
-        if not exceeded(question.study, found.bill, proved=found.proved):
+        if not exceeded(study, found, demand, claim.route):
             # The first search was cut short, and this one, with more room, met a plan within.
             return feasible_route(question, claim, found)
     together = not helping
     if together:
         unlimited = search(question, claim, deadline, limits)
-        assert isinstance(unlimited, Answer), "an open route has a plan beyond all limits"
+        if isinstance(unlimited, NothingFound):
+            return route_out_of_reach(claim, proved=settled and unlimited.proved)
         helping = [unlimited]
-    exceeds = [
-        each
-        for found in helping
-        for each in exceeded(question.study, found.bill, proved=found.proved)
-    ]
+    exceeds = [each for found in helping for each in exceeded(study, found, demand, claim.route)]
     plans = [plan_of(question, found) for found in helping]
     kind = "over_limits_together" if together and len(exceeds) > 1 else "over_limits"
     return RouteAnswer(
         route=claim.route,
         status="over_limits",
         reason=reason_beyond(kind if settled else "out_of_time", exceeds),
-        beyond=min(plans, key=lambda plan: preference(plan.buy)),
+        beyond=min(plans, key=preference),
         exceeds=tuple(exceeds),
     )
+
+
+def route_out_of_reach(claim: Claim, *, proved: bool) -> RouteAnswer:
+    """Return a route that is open, but on which no number of records shows the effect."""
+    if proved:
+        return RouteAnswer(route=claim.route, status="impossible", reason=Reason("out_of_reach"))
+    return RouteAnswer(route=claim.route, status="over_limits", reason=Reason("out_of_time"))
 
 
 def reason_beyond(kind: str, exceeds: Iterable[Exceeded]) -> Reason:
@@ -305,7 +324,12 @@ def plan_of(question: Question, answer: Answer) -> Plan:
         diagram.names[claim.outcome]: Reason("outcome"),
     }
     for node in diagram.by_name(roles.nodes):
-        needed[diagram.names[node]] = reason_of(diagram, route.reasons.needed(claim, roles, node))
+        name = diagram.names[node]
+        if name in answer.extras:
+            is_cheaper = answer.extras[name] is not None
+            needed[name] = Reason("saves" if is_cheaper else "keeps_limits", variables=(name,))
+        else:
+            needed[name] = reason_of(diagram, route.reasons.needed(claim, roles, node))
     others = [
         node
         for node in diagram.by_name(diagram.nodes(question.study.prices.ways))
@@ -325,6 +349,9 @@ def plan_of(question: Question, answer: Answer) -> Plan:
             bill=answer.bill,
             lower_bound=answer.lower_bound,
         ),
+        precision=answer.precision,
+        extras=answer.extras,
+        narrowest=answer.narrowest,
         needed=needed,
         left_out=left_out,
         never=tuple(name for name, reason in left_out.items() if reason.kind in NEVER),

@@ -4,34 +4,24 @@ Nothing above this module asks how an answer was found. No answer leaves it that
 plain check of its route and the limits of its bill.
 """
 
-from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, field, replace
 from fractions import Fraction
-from time import monotonic
 
 from costs.bill import Bill, bill_for
 from costs.prices import WayName
 from costs.tally import Tally
 from planner.claims import Claim, Roles
+from planner.deadline import Deadline
+from planner.joint import JointStudy, cheapest_study, weighed_up
+from planner.precision import Precision
 from planner.program import Choice, Found, NothingFound, Within, cheapest_purchase
 from planner.routes import ROUTES
 
-__all__ = ["Answer", "Deadline", "cheapest"]
+__all__ = ["Answer", "cheapest"]
 
 Opened = tuple[tuple[Claim, Roles], ...]
 """The claim that each choice opens, with its roles."""
-
-
-class Deadline:
-    """The time that a search, or several in a row, may take."""
-
-    def __init__(self, seconds: float) -> None:
-        self._end = monotonic() + seconds
-
-    @property
-    def left(self) -> float:
-        """Seconds that are left; never negative."""
-        return max(0.0, self._end - monotonic())
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -42,6 +32,13 @@ class Answer:
     lower_bound: Fraction
     """Nothing within the limits costs less."""
     opened: Opened
+    precision: Precision | None = None
+    """What it achieves; None where the strengths are not known."""
+    extras: Mapping[str, Fraction | None] = field(default_factory=dict)
+    """Variables that validity does not need, with what the same precision would cost more without
+    them; None where a limit would break without them."""
+    narrowest: float | None = None
+    """Where money is given: no study within the limits has a smaller half-width."""
 
     @property
     def proved(self) -> bool:
@@ -63,6 +60,57 @@ def cheapest(
     deadline
         A search that needs more time answers with the best purchase so far, and its bound.
     """
+    if within.demand is not None:
+        (choice,) = choices
+        return cheapest_sized(choice, within, deadline)
+    return cheapest_on_records(choices, within, deadline)
+
+
+def cheapest_sized(choice: Choice, within: Within, deadline: Deadline) -> Answer | NothingFound:
+    """Return the cheapest study whose precision is known, and good enough.
+
+    On a fixed number of records the integer program answers, if its plan keeps the limits of bias
+    and first stage: nothing that keeps them costs less. Else, and at a target, set, ways and number
+    of records are searched for together.
+    """
+    assert within.demand is not None, "precision is known"
+    bound, hint = Fraction(0), None
+    if within.demand.records is not None:
+        plain = cheapest_on_records([choice], within, deadline)
+        if isinstance(plain, NothingFound) and plain.proved:
+            return plain
+        bound = plain.lower_bound if isinstance(plain, Answer) else plain.bound
+        if isinstance(plain, Answer):
+            ((claim, roles),) = plain.opened
+            weighed = weighed_up(claim, roles, dict(plain.bill.ways), within, bound)
+            if weighed is not None:
+                return answer_to(weighed, within)
+            hint = Found(bill=plain.bill, opened=plain.opened, bound=bound, proved=plain.proved)
+    study = cheapest_study(choice.claims, within, deadline, hint)
+    if isinstance(study, NothingFound):
+        return replace(study, bound=bound)
+    return answer_to(replace(study, bound=max(study.bound, bound)), within)
+
+
+def answer_to(study: JointStudy, within: Within) -> Answer:
+    """Return a study as an answer, once it has passed the plain checks."""
+    claim = study.claim
+    assert ROUTES[claim.route].is_valid(claim, study.roles), "the plain check agrees"
+    assert not within.broken(study.bill), "the bill keeps the limits"
+    return Answer(
+        bill=study.bill,
+        lower_bound=study.bound,
+        opened=((claim, study.roles),),
+        precision=study.precision,
+        extras={claim.diagram.names[each.node]: each.saves for each in study.extras},
+        narrowest=study.narrowest,
+    )
+
+
+def cheapest_on_records(
+    choices: Sequence[Choice], within: Within, deadline: Deadline
+) -> Answer | NothingFound:
+    """Return the cheapest purchase for the number of records in the terms."""
     found = cheapest_purchase(
         choices,
         within,
