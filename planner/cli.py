@@ -19,7 +19,7 @@ import typer
 
 from costs.faults import Fault, Faults, FaultyInput, Spot
 from planner import whatif
-from planner.checking import Summary, not_yet_applied, out_of_date, summary_of
+from planner.checking import Summary, left_unchecked, out_of_date, summary_of
 from planner.reading import read_study
 from planner.report.files import refuse_overwriting, write_whole
 from planner.study import Study
@@ -100,7 +100,9 @@ def recommend(
     ] = None,
     records: Annotated[
         int | None,
-        typer.Option(metavar="NUMBER", help="Complete records, in place of the study's."),
+        typer.Option(
+            metavar="NUMBER", help="So many complete records, in place of the study's size."
+        ),
     ] = None,
     without: Annotated[
         list[str] | None,
@@ -131,7 +133,7 @@ def recommend(
     if workbook is not None:
         refuse_workbook(workbook, original, force=force)
     changed = what_if(original, route, records, without, held)
-    for remark in (*not_yet_applied(changed), *out_of_date(changed, datetime.now(tz=UTC).date())):
+    for remark in (*left_unchecked(changed), *out_of_date(changed, datetime.now(tz=UTC).date())):
         say(f"note: {remark}")
     # Imported here, so that help and check do without the solver and the layout of reports.
     from rich.console import Console  # noqa: PLC0415
@@ -210,9 +212,11 @@ def print_json(values: dict[str, object]) -> None:
 def print_summary(path: Path, summary: Summary) -> None:
     """Print what a study holds."""
     unmeasurable = summary.variables - summary.measurable
+    implied = "" if summary.effect is None else f"{summary.effect:.3g} {summary.effect_unit}"
     rows = {
         "effect": f"{summary.treatment} on {summary.outcome}",
-        "records": f"{summary.records:,}",
+        **({"implied effect": implied} if implied else {}),
+        "size": summary.size,
         "variables": f"{summary.variables:,}: {summary.measurable:,} measurable, {unmeasurable:,}"
         f" not; {summary.hidden_common_causes:,} hidden common causes",
         "arrows": f"{summary.arrows:,}, {summary.arrows_with_strength:,} of them with a strength",
@@ -222,10 +226,11 @@ def print_summary(path: Path, summary: Summary) -> None:
         if summary.timed
         else "no times given",
     }
+    width = max(map(len, rows)) + 2
     typer.echo(f"{path}: no faults.")
     typer.echo(summary.title)
     for heading, text in rows.items():
-        typer.echo(f"  {heading:<11}{text}")
+        typer.echo(f"  {heading:<{width}}{text}")
     if summary.remarks:
         typer.echo("Worth a second look:")
         for remark in summary.remarks:

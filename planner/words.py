@@ -13,6 +13,9 @@ SHARED = {
     # Why a variable is measured.
     "treatment": "the cause in question",
     "outcome": "what {treatment} may change",
+    "saves": "not needed for validity, but it steadies the estimate by more than it costs",
+    "keeps_limits": "not needed for validity, but without it the plan would break one of its"
+    " limits",
     "carries": "a step by which the effect works, {path}",
     # Why a variable is left out.
     "on_causal_path": "is a step by which the effect works, {path}; adjusting for it would take"
@@ -29,6 +32,8 @@ SHARED = {
     " effect is zero. Nine times in ten an arrow was forgotten.",
     "selection_after_treatment": "The rows are selected by a result of {treatment}, {path}: no"
     " analysis of the selected rows alone gives the effect.",
+    "out_of_reach": "The route is open, but its readings leave too little of the effect: not even"
+    " 1,000,000,000 records would show it.",
     "over_limits": "The route is open, but only beyond one of the limits {all}.",
     "over_limits:one": "The route is open, but only beyond the limit {all}.",
     "over_limits_together": "The route is open, but only beyond all of the limits {all}.",
@@ -101,9 +106,28 @@ def estimand(route: str, study: Study) -> str:
     return words
 
 
-def leans_on(route: str, effect: Effect) -> tuple[str, ...]:
-    """Return what a route leans on, in plain words."""
+def leans_on(
+    route: str,
+    effect: Effect,
+    *,
+    instruments: Iterable[str] = (),
+    mediators: Iterable[str] = (),
+    first_stage: str = "",
+) -> tuple[str, ...]:
+    """Return what a route leans on, in plain words.
+
+    Parameters
+    ----------
+    first_stage
+        What is known of the strength of the instrument, as it ends a sentence.
+    """
     return tuple(
-        clause.format(treatment=effect.treatment, outcome=effect.outcome)
+        clause.format(
+            treatment=effect.treatment,
+            outcome=effect.outcome,
+            instruments=conjoined(instruments),
+            mediators=conjoined(mediators),
+            first_stage=first_stage,
+        )
         for clause in ROUTES[route].words.leans_on
     )

@@ -37,7 +37,7 @@ def told(path: Path) -> list[str]:
         ),
         (
             STUDY.replace("size: {records: 40}", "size:"),
-            ["study.yaml:4: size: does not say how many records."],
+            ["study.yaml:4: size: does not say how large the study is to be."],
         ),
         (
             STUDY.replace("ask: {per", "<<: {per_unit: 0}\n      ask: {per"),

@@ -40,10 +40,21 @@ def test_a_new_study_overwrites_nothing(
 def test_check_prints_figures_or_json(run: Callable[..., Ran]) -> None:
     ran = run("check", PERMITS)
     assert ran.code == 0
-    assert "  variables  19: 17 measurable, 2 not; 0 hidden common causes\n" in ran.out
-    assert "  arrows     31, 31 of them with a strength\n" in ran.out
+    assert "  implied effect  -0.158 outcome SDs per treatment SD\n" in ran.out
+    assert (
+        "  size            detect the effect that the strengths imply, with power 0.8\n" in ran.out
+    )
+    assert "  variables       19: 17 measurable, 2 not; 0 hidden common causes\n" in ran.out
+    assert "  arrows          31, 31 of them with a strength\n" in ran.out
     values = json.loads(run("check", PERMITS, "--json").out)
     assert (values["variables"], values["arrows"], values["remarks"]) == (19, 31, [])
+    assert values["records"] is None
+    assert values["effect"] == pytest.approx(-0.1575)
+    # Without strengths no effect is implied, and the headings take less room.
+    ran = run("check", FIRST)
+    assert "implied" not in ran.out
+    assert "  size       400 records\n" in ran.out
+    assert json.loads(run("check", FIRST, "--json").out)["records"] == 400
 
 
 def test_faults_go_to_stderr_and_give_exit_code_2(
@@ -84,23 +95,44 @@ def test_options_change_the_study(run: Callable[..., Ran]) -> None:
         return json.loads(ran.out)
 
     plain = answer()
-    assert answer("--records", "100")["buy"]["records"] == 100
-    routes = answer("--route", "mechanism")["effects"][0]["routes"]
-    assert [each["route"] for each in routes] == ["mechanism"]
-    held = answer("--held", "response.coded")
-    assert plain["buy"]["measure"]["response"] == "coded"
+    assert plain["size"] == {"detect": "implied", "power": 0.8}
+    hundred = answer("--records", "100")
+    assert (hundred["size"], hundred["buy"]["records"]) == ({"records": 100}, 100)
+    routes = answer("--route", "conditioning")["effects"][0]["routes"]
+    assert [each["route"] for each in routes] == ["conditioning"]
+    held = answer("--held", "file_quality.audit")
+    assert plain["buy"]["measure"]["file_quality"] == "audit"
     assert held["buy"]["cost"]["total"] < plain["buy"]["cost"]["total"]
-    assert held["inputs"]["changes"] == ["--held response.coded"]
-    without = answer("--without", "response", "--without", "gis")
-    assert without["effects"][0]["recommended"] == "mechanism"
+    assert held["inputs"]["changes"] == ["--held file_quality.audit"]
+    without = answer("--without", "file_quality", "--without", "quarter")
+    assert without["effects"][0]["recommended"] == "conditioning"
+
+
+def test_json_says_what_a_plan_achieves(run: Callable[..., Ran]) -> None:
+    routes = json.loads(run("recommend", PERMITS, "--json").out)["effects"][0]["routes"]
+    plan = {each["route"]: each["plan"] for each in routes}["mechanism"]
+    precision = plan["precision"]
+    assert precision["effect"] == pytest.approx(-0.1575)
+    assert abs(precision["limit"]) < abs(precision["effect"])
+    assert 0.8 <= precision["power"] < 0.81
+    assert max(precision["bias_sources"].values()) < precision["bias_bound"] <= 0.15
+    assert precision["first_stage_F"] is None
+    (extra,) = plan["extras"]
+    assert extra == {"variable": "project_size", "saves": 206.04}
+    reasons = {each["variable"]: each["text"] for each in plan["needed"]}
+    assert reasons["project_size"] == (
+        "not needed for validity, but it steadies the estimate by more than it costs"
+    )
 
 
 def test_prices_can_be_replaced(run: Callable[..., Ran], write: Callable[..., Path]) -> None:
     text = (ROOT / "costs" / "lists" / "permit_office.csv").read_text(encoding="utf-8")
-    path = write(text.replace("coded by hand,1200,8.50", "coded by hand,1200,0.00"), "cheap.csv")
+    old, new = "score the lodged file,1500,34.00", "score the lodged file,1500,0.00"
+    assert old in text
+    path = write(text.replace(old, new), "cheap.csv")
     ran = run("recommend", PERMITS, "--json", "--prices", path)
     bill = json.loads(ran.out)["buy"]["bill"]
-    assert {line["name"]: line["amount"] for line in bill}["response.coded"] == 1200
+    assert {line["name"]: line["amount"] for line in bill}["file_quality.audit"] == 1500
 
 
 def test_options_that_make_no_sense_are_refused(run: Callable[..., Ran]) -> None:
@@ -119,13 +151,14 @@ def test_options_that_make_no_sense_are_refused(run: Callable[..., Ran]) -> None
         assert ran.err.startswith(f"command line:1: {message}")
 
 
-def test_what_is_not_applied_yet_is_told(
+def test_what_cannot_be_applied_is_told(
     run: Callable[..., Ran], write: Callable[..., Path]
 ) -> None:
     path = write(FIRST.read_text(encoding="utf-8") + "tolerance: {bias: 0.1}\n")
     ran = run("recommend", path)
     assert ran.err == (
-        "note: tolerance.bias is not applied yet: plans are not checked for bias by poor readings.\n"
+        "note: tolerance.bias cannot be applied: 10 strengths are missing: drawn → visit, income → visit,"
+        " dwelling → visit and 7 more.\n"
     )
 
 

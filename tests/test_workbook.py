@@ -44,15 +44,44 @@ def written(run: Callable[..., Ran], study: Path, tmp_path: Path) -> Path:
 
 def test_the_measurement_list_is_that_of_the_plan(run: Callable[..., Ran], tmp_path: Path) -> None:
     book = load_workbook(written(run, PERMITS, tmp_path))
-    assert book.sheetnames == ["measure", "bill"]
-    rows = list(book["measure"].iter_rows(min_row=12, max_row=22, values_only=True))
-    plan = recommend(read_study(PERMITS)).effects[0].routes[0].plan
+    assert book.sheetnames == ["measure", "bill", "precision"]
+    rows = list(book["measure"].iter_rows(min_row=12, max_row=18, values_only=True))
+    plan = recommend(read_study(PERMITS)).effects[0].routes[1].plan
     assert plan is not None
     assert [row[0] for row in rows] == [*plan.buy.measure, *plan.buy.bill.components]
-    assert rows[2][:4] == ("agent", "covariate", "form", "ticked on the form")
+    how = "past applications in the agents' registry"
+    assert rows[2][:4] == ("agent", "covariate", "registry", how)
     assert rows[2][10] == (
-        "left out, premeet ← agent → file_quality → days would pass for an effect of premeet"
+        "left out, premeet ← agent → file_quality would pass for part of the mechanism"
     )
+    assert rows[4][10] == (
+        "not needed for validity; without it the same precision would cost 206.04 EUR more"
+    )
+
+
+def test_what_the_plan_achieves_has_a_sheet(run: Callable[..., Ran], tmp_path: Path) -> None:
+    sheet = load_workbook(written(run, PERMITS, tmp_path))["precision"]
+    rows = {row[0]: row[1] for row in sheet.iter_rows(min_row=5, max_col=2, values_only=True)}
+    assert rows["complete records"] == "121"
+    assert rows["units started"] == "127"
+    assert rows["effects are in"] == "outcome SDs per treatment SD"
+    assert rows["effect that is taken to be true"] == "-0.158"
+    assert rows["95 % confidence interval (half-width)"] == "± 0.111"
+    assert rows["chance to detect the effect (power)"] == "80 %"
+    assert rows["chance that the interval holds the effect (coverage)"] == "92.8 %"
+    assert rows["bias by errors of readings, up to about"] == "14.2 %"
+    assert rows["  alone by file_quality.audit"] == "10.4 %"
+    assert "  alone by project_size.system" not in rows
+    leaning = "the whole effect of premeet on days runs through file_quality"
+    assert any(str(name).startswith(leaning) for name in rows)
+
+
+def test_without_strengths_the_sheet_says_so(
+    run: Callable[..., Ran], write: Callable[..., Path], tmp_path: Path
+) -> None:
+    sheet = load_workbook(written(run, write(LOSSY), tmp_path))["precision"]
+    assert sheet["B5"].value == "360"
+    assert sheet["B7"].value == "not worked out: 3 strengths are missing: -c → =x, =x → +y, -c → +y"
 
 
 def test_text_that_begins_like_a_formula_stays_text(

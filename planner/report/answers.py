@@ -5,8 +5,19 @@ from dataclasses import replace
 from fractions import Fraction
 
 from costs.bill import bill_for
+from planner.checking import resting_on_default
+from planner.limits import design_effect, limits_of
 from planner.plan import Buy, EffectAnswer, Exceeded, Plan, Recommendation, RouteAnswer
-from planner.report.numbers import counted, exact, money, percent
+from planner.report.achieved import interval, real_price, size_sentences
+from planner.report.numbers import (
+    at_least,
+    counted,
+    exact,
+    figure,
+    percent,
+    percent_at_most,
+    price_of,
+)
 from planner.routes import ROUTES
 from planner.study import Effect, Study
 from planner.words import conjoined, sentence
@@ -16,29 +27,20 @@ __all__ = [
     "beyond_limits",
     "cautions",
     "closing_notes",
-    "price_of",
     "same_for_all",
 ]
 
 CORRELATIONS = (Fraction(1, 2), Fraction(1, 5), Fraction(1, 10))
 """Of instrument and treatment, for which the price of a weak instrument is told."""
-
-
-def price_of(total: Fraction, study: Study) -> str:
-    """Return an amount of money with its currency."""
-    return f"{money(total)} {study.currency}".strip()
+TIE = Fraction(5, 100)
+"""Totals, or widths, no further apart than this share are called a tie."""
 
 
 def answer_sentences(answer: Recommendation, effect_answer: EffectAnswer) -> Iterable[str]:
     """Return the answer in a few sentences: what to do, for how much, and how sure that is."""
     study, effect = answer.study, effect_answer.effect
     if answer.buy is not None and effect_answer.recommended is not None:
-        route = effect_answer.answer(effect_answer.recommended)
-        assert route.plan, "the recommended route has a plan"
-        yield recommendation(study, effect, answer.buy, route.route, route.plan)
-        if route.plan.instruments:
-            yield weak_instrument(study, answer.buy)
-        yield from next_best(study, effect, effect_answer, route)
+        yield from recommendation(study, effect_answer, answer.buy)
     elif answer.status == "no_effect":
         yield sentence(effect_answer.routes[0].reason, effect)
     elif same_for_all(effect_answer):
@@ -63,15 +65,34 @@ def same_for_all(answer: EffectAnswer) -> bool:
     }
 
 
-def recommendation(study: Study, effect: Effect, buy: Buy, route: str, plan: Plan) -> str:
-    """Return what to do, for how much, and how sure it is that nothing cheaper would do."""
+# ------------------------------------------------------------------------------ the recommendation
+
+
+def recommendation(study: Study, answer: EffectAnswer, buy: Buy) -> Iterable[str]:
+    """Return what to do, how sure it is that nothing better would do, and what else comes close."""
+    assert answer.recommended is not None, "there is a recommendation"
+    effect, chosen = answer.effect, answer.answer(answer.recommended)
+    plan = chosen.plan
+    assert plan is not None, "the recommended route has a plan"
+    others = [each for each in answer.routes if each.plan is not None and each is not chosen]
+    others.sort(key=lambda each: standing(study, each))
     things = counted(len(buy.measure), "variable")
-    records = counted(buy.bill.records, "complete record")
-    total = price_of(buy.bill.total, study)
-    return (
-        f"Measure {things} and {analysis(route, plan, effect)}. To end with {records}, start"
-        f" {counted(buy.bill.started, 'unit')}: {total} in all. {proof(study, buy)}"
+    yield (
+        f"Measure {things} and {analysis(chosen.route, plan, effect)}."
+        f" {size_sentences(study, effect, plan)}"
     )
+    yield proof(study, buy, plan)
+    if plan.precision is None and plan.instruments:
+        yield weak_instrument(study, buy)
+    if plan.precision is not None and study.size.records is not None:
+        yield from not_as_precise(study, plan, others)
+    ties = [each for each in others if distance(study, chosen, each) <= TIE]
+    for each in ties:
+        yield tie(study, effect, chosen, each)
+    if others and not ties:
+        yield next_best(study, effect, others[0])
+    if study.size.spend is None:
+        yield from cheaper_beyond(study, effect, answer, plan)
 
 
 def analysis(route: str, plan: Plan, effect: Effect) -> str:
@@ -87,31 +108,107 @@ def analysis(route: str, plan: Plan, effect: Effect) -> str:
     )
 
 
-def proof(study: Study, buy: Buy) -> str:
-    """Return how sure it is that nothing cheaper would do, and what that does not say."""
-    records = counted(buy.bill.records, "record")
-    if buy.proved:
-        sure = (
-            f"Proved: for {records}, by this diagram and these prices, no plan by"
-            f" {the_routes(study)}."
-        )
-    else:
-        gap = percent(1 - buy.lower_bound / buy.bill.total)
-        sure = (
-            f"Not proved: the time ran out. No plan costs less than"
-            f" {price_of(buy.lower_bound, study)}, so at most {gap} could still be saved."
-        )
-    return f"{sure} Whether {records} are enough is not worked out here."
-
-
-def the_routes(study: Study) -> str:
-    """Return by which routes no plan costs less, and which ones the study leaves out."""
+def proof(study: Study, buy: Buy, plan: Plan) -> str:
+    """Return how sure it is that no study would do better, and by which routes."""
+    if not buy.proved:
+        return f"Not proved: the time ran out. {gap(study, buy, plan)}"
+    known = plan.precision is not None
+    basis = (
+        "this diagram, these strengths and these prices"
+        if known
+        else "this diagram and these prices"
+    )
     titles = {name: route.words.title for name, route in ROUTES.items()}
     left_out = conjoined(title for name, title in titles.items() if name not in study.routes)
-    if not left_out:
-        return "any route costs less"
-    allowed = " or ".join(titles[name] for name in study.routes)
-    return f"{allowed} costs less; the study leaves out {left_out}"
+    by = " or ".join(titles[name] for name in study.routes) if left_out else "any route"
+    but = f"; the study leaves out {left_out}" if left_out else ""
+    within = " within the limits" if limits_of(study) or study.tolerance.bias is not None else ""
+    if study.size.spend is not None:
+        return f"Proved: by {basis}, no study by {by}{within} has a narrower interval{but}."
+    if study.size.records is not None:
+        records = counted(buy.bill.records, "record")
+        return f"Proved: for {records}, by {basis}, no plan by {by}{within} costs less{but}."
+    return f"Proved: by {basis}, no study by {by}{within} does as much for less{but}."
+
+
+def gap(study: Study, buy: Buy, plan: Plan) -> str:
+    """Return what a search that was cut short may have missed."""
+    if study.size.spend is not None:
+        if not plan.narrowest:
+            return "How much narrower the interval could be is not known."
+        return f"No study within the limits has a half-width below {at_least(plan.narrowest)}."
+    share = percent_at_most(float(1 - buy.lower_bound / buy.bill.total))
+    least = price_of(buy.lower_bound, study.currency)
+    return f"No plan costs less than {least}, so at most {share} could still be saved."
+
+
+# --------------------------------------------------------------------------------- what comes close
+
+
+def standing(study: Study, answer: RouteAnswer) -> Fraction:
+    """Return by what routes are compared: the price, or, where money is given, the width."""
+    plan = answer.plan
+    assert plan is not None, "routes with a plan are compared"
+    if study.size.spend is not None:
+        assert plan.precision is not None, "where money is given, precision is known"
+        return Fraction(plan.precision.half_width)
+    return plan.buy.bill.total
+
+
+def distance(study: Study, chosen: RouteAnswer, other: RouteAnswer) -> Fraction:
+    """Return by what share another route is dearer, or its interval wider."""
+    least, more = standing(study, chosen), standing(study, other)
+    return more / least - 1 if least else Fraction(more > 0)
+
+
+def tie(study: Study, effect: Effect, chosen: RouteAnswer, other: RouteAnswer) -> str:
+    """Return that another route is as good as the recommended one, and what it would be."""
+    assert other.plan is not None, "what ties has a plan"
+    known = "prices and strengths are" if other.plan.precision else "prices are"
+    apart = percent_at_most(float(distance(study, chosen, other)))
+    more = "its interval" if study.size.spend is not None else "its price"
+    return (
+        f"A TIE with {ROUTES[other.route].words.title}, {outline(study, other.plan)}: {more} is"
+        f" only {apart} above, and 5 % is less than {known} known to. Choose by what each leans on."
+        f" There, {analysis(other.route, other.plan, effect)}. See it whole with --route"
+        f" {other.route}."
+    )
+
+
+def next_best(study: Study, effect: Effect, other: RouteAnswer) -> str:
+    """Return what the best plan of another route would be."""
+    assert other.plan is not None, "there is something to outline"
+    return (
+        f"The best other route, {ROUTES[other.route].words.title}, takes"
+        f" {outline(study, other.plan)}: {analysis(other.route, other.plan, effect)}."
+    )
+
+
+def outline(study: Study, plan: Plan) -> str:
+    """Return what a plan costs, on how many records, and what they give where that is no target."""
+    price = price_of(plan.buy.bill.total, study.currency)
+    size, precision = study.size, plan.precision
+    words = price
+    if size.records is None:
+        words = f"{price} on {counted(plan.buy.bill.records, 'record')}"
+    if precision is not None and (size.records is not None or size.spend is not None):
+        words = f"{words} for a {interval(study, precision.half_width)}"
+    return words
+
+
+def cheaper_beyond(study: Study, effect: Effect, answer: EffectAnswer, plan: Plan) -> Iterable[str]:
+    """Return which routes would cost less than the plan if a limit gave way."""
+    for each in answer.routes:
+        beyond = each.beyond
+        if beyond is not None and beyond.buy.bill.total < plan.buy.bill.total:
+            price = price_of(beyond.buy.bill.total, study.currency)
+            yield (
+                f"Beyond the limits, {ROUTES[each.route].words.title} would cost less, {price}."
+                f" {beyond_limits(each, effect, study)}"
+            )
+
+
+# ------------------------------------------------------------- what the same precision would cost
 
 
 def weak_instrument(study: Study, buy: Buy) -> str:
@@ -126,7 +223,7 @@ def weak_instrument(study: Study, buy: Buy) -> str:
         more = int(records / correlation**2)
         bill = bill_for(buy.bill.ways, study.prices, replace(study.terms, records=more))
         is_too_many = study.frame_size is not None and bill.started > study.frame_size
-        price = "more than the frame holds" if is_too_many else price_of(bill.total, study)
+        price = "more than the frame holds" if is_too_many else price_of(bill.total, study.currency)
         steps.append(f"{more:,} records ({price}) if ρ is {float(correlation):g}")
     return (
         "BUT MIND: this is the cheapest plan for so many records, not for the same precision. An"
@@ -136,21 +233,35 @@ def weak_instrument(study: Study, buy: Buy) -> str:
     )
 
 
-def next_best(
-    study: Study, effect: Effect, answer: EffectAnswer, chosen: RouteAnswer
-) -> Iterable[str]:
-    """Return the cheapest plan of another route, if there is one."""
-    others = [
-        (each.plan.buy.bill.total, each.route, each.plan)
-        for each in answer.routes
-        if each.plan and each is not chosen
-    ]
-    if others:
-        total, route, plan = min(others, key=lambda each: each[0])
+def not_as_precise(study: Study, plan: Plan, others: Iterable[RouteAnswer]) -> Iterable[str]:
+    """Return what the plan would cost with the precision of another route, if that is cheaper so.
+
+    On a given number of records the cheapest set is often the one that says least.
+    """
+    for other in others:
+        assert other.plan is not None, "routes with a plan are compared"
+        assert other.plan.precision is not None, "precision is known for all routes"
+        real = real_price(study, plan, other.plan)
+        total = other.plan.buy.bill.total
+        if real is not None and real.total <= total:
+            continue
+        if real is None:
+            what = "no number of records would do"
+        elif study.frame_size is not None and real.started > study.frame_size:
+            what = f"it would take {real.records:,} records, more than the frame holds"
+        else:
+            price = price_of(real.total, study.currency)
+            what = f"it would take {real.records:,} records and {price}"
         yield (
-            f"The best other route, {ROUTES[route].words.title}, would be to"
-            f" {analysis(route, plan, effect)}: {price_of(total, study)}."
+            "BUT MIND: this is the cheapest plan for so many records, not for the same precision."
+            f" To say as much as the plan by {ROUTES[other.route].words.title} does for"
+            f" {price_of(total, study.currency)} (a"
+            f" {interval(study, other.plan.precision.half_width)}), {what}."
         )
+        return
+
+
+# ------------------------------------------------------------------------------- beyond the limits
 
 
 def beyond_limits(answer: RouteAnswer, effect: Effect, study: Study) -> str:
@@ -176,10 +287,26 @@ def needed(each: Exceeded, study: Study) -> str:
             return f"a frame of {need} units, where there are {most}"
         case "least_reliability":
             return f"readings of reliability {need}, where {most} is the least allowed"
+        case "bias" | "first_stage_F":
+            return needed_as_computed(each)
+        case "records":
+            return f"{need} records, where the study has {most}"
         case limit:
             name = limit.removeprefix("burdens.")
             label = study.terms.burdens[name].label or name
             return f"{need} {label} per unit, where {most} is allowed"
+
+
+def needed_as_computed(each: Exceeded) -> str:
+    """Return what would be needed of a limit on a computed number."""
+    if each.limit == "bias":
+        # Rounded up: what is allowed has to be no less.
+        need = percent_at_most(float(each.needed), places=2)
+        need = need if each.proved else f"at most {need}"
+        return f"a bias bound of {need}, where {exact(100 * each.allowed)} % is allowed"
+    reached = at_least(float(each.needed))
+    reached = reached if each.proved else f"at least {reached}"
+    return f"a first-stage F of {reached}, where {exact(each.allowed)} is the least allowed"
 
 
 def cautions(buy: Buy, study: Study) -> Iterable[str]:
@@ -203,12 +330,17 @@ def cautions(buy: Buy, study: Study) -> Iterable[str]:
         )
 
 
-def closing_notes(study: Study, buy: Buy | None) -> Iterable[str]:
-    """Return what else a reader should know: losses, errors of reading, the kind of analysis."""
+def closing_notes(study: Study, route: str, plan: Plan | None, buy: Buy | None) -> Iterable[str]:
+    """Return what else a reader should know: losses, clusters, strengths and readings assumed."""
     if buy is not None:
         yield losses(study, buy)
+    if plan is not None and plan.precision is not None:
+        clustered = design_effect(study, route)
+        if clustered != 1:
+            yield f"Clusters: on this route they multiply the variance by {figure(clustered)}."
+        yield from resting_on_default(study)
+    if buy is not None:
         yield read_without_error(study, buy)
-    yield "All planned analyses are linear."
 
 
 def losses(study: Study, buy: Buy) -> str:

@@ -7,10 +7,28 @@ from fractions import Fraction
 from costs.bill import DIRECT, Bill, Line, running_price
 from costs.prices import Purchase
 from planner.plan import Buy, Plan, RouteAnswer
-from planner.report.answers import beyond_limits, price_of
-from planner.report.numbers import exact, money
+from planner.precision import FORGIVEN, Precision
+from planner.report.achieved import (
+    bias_sources,
+    effect_unit,
+    interval_name,
+    leanings,
+    why_unknown,
+)
+from planner.report.answers import beyond_limits
+from planner.report.numbers import (
+    at_least,
+    at_most,
+    exact,
+    figure,
+    money,
+    percent,
+    percent_at_least,
+    price_of,
+)
+from planner.report.spared import worth_of_extra
 from planner.study import Effect, Study
-from planner.words import conjoined, estimand, leans_on, sentence
+from planner.words import conjoined, estimand, sentence
 
 __all__ = [
     "BillRow",
@@ -21,13 +39,14 @@ __all__ = [
     "bought_rows",
     "burden_notes",
     "left_out_notes",
+    "precision_notes",
     "route_row",
     "sum_notes",
 ]
 
 NOTHING = "–"
 """Stands where there is nothing to pay, or nothing to say."""
-STATUS_WORDS = {"feasible": "open", "over_limits": "beyond the limits", "impossible": "closed"}
+STATUS_WORDS = {"feasible": "open", "over_limits": "beyond limits", "impossible": "closed"}
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -37,6 +56,8 @@ class Bought:
     name: str
     part: str
     """Its role, or ``component``."""
+    is_extra: bool
+    """Whether validity could do without it."""
     way: str
     how: str
     units: str
@@ -81,6 +102,16 @@ class RouteRow:
     each: str
     once: str
     variables: str
+    records: str
+    started: str
+    half_width: str
+    """Empty, like all that follows from it, where precision is not known."""
+    power: str
+    coverage: str
+    bias: str
+    worst: str
+    """The reading that puts the estimate off most."""
+    first_stage: str
     estimand: str
     leans_on: tuple[str, ...]
     reason: str
@@ -96,6 +127,7 @@ def bought_rows(plan: Plan, route: str, effect: Effect, study: Study) -> Iterabl
     for variable, way in plan.buy.measure.items():
         purchase = study.prices.ways[variable][way]
         reason = plan.needed[variable]
+        is_extra = variable in plan.extras
         yield bought_row(
             purchase,
             lines[f"{variable}.{way}"],
@@ -104,7 +136,10 @@ def bought_rows(plan: Plan, route: str, effect: Effect, study: Study) -> Iterabl
             part=plan.role(variable) or reason.kind,
             way=way,
             how=purchase.label or study.variables[variable].label,
-            why=sentence(reason, effect, route, study.unmeasurable),
+            is_extra=is_extra,
+            why=worth_of_extra(variable, plan, route, effect, study)
+            if is_extra
+            else sentence(reason, effect, route, study.unmeasurable),
         )
     for name in plan.buy.bill.components:
         component = study.prices.components[name]
@@ -114,15 +149,19 @@ def bought_rows(plan: Plan, route: str, effect: Effect, study: Study) -> Iterabl
             study,
             name=name,
             part="component",
+            is_extra=False,
             way="",
             how=component.label,
             why=component_reason(name, plan.buy, study),
         )
 
 
-def bought_row(purchase: Purchase, line: Line, study: Study, **words: str) -> Bought:
+def bought_row(
+    purchase: Purchase, line: Line, study: Study, *, is_extra: bool, **words: str
+) -> Bought:
     """Return a row, with its prices and what they come to."""
     return Bought(
+        is_extra=is_extra,
         units=f"{line.units:,}",
         each=price_each(purchase, study),
         once=money(purchase.setup) if purchase.setup else NOTHING,
@@ -219,20 +258,73 @@ def burden_notes(buy: Buy, study: Study) -> Iterable[Note]:
 # --------------------------------------------------------------------------------------- all routes
 
 
-def route_row(answer: RouteAnswer, effect: Effect, study: Study) -> RouteRow:
-    """Return one route beside the others; beyond the limits, with the plan that would do."""
+def route_row(
+    answer: RouteAnswer, effect: Effect, study: Study, *, is_recommended: bool, is_shown: bool
+) -> RouteRow:
+    """Return one route beside the others; beyond the limits, with the plan that would do.
+
+    What the shown plan leans on is not said again.
+    """
     plan = answer.plan or answer.beyond
+    bill = plan.buy.bill if plan else None
     return RouteRow(
         name=answer.route,
-        status=STATUS_WORDS[answer.status],
-        total=price_of(plan.buy.bill.total, study) if plan else NOTHING,
-        each=money(plan.buy.bill.next_unit) if plan else NOTHING,
-        once=money(plan.buy.bill.setup) if plan else NOTHING,
+        status="recommended" if is_recommended else STATUS_WORDS[answer.status],
+        total=price_of(bill.total, study.currency) if bill else NOTHING,
+        each=money(bill.next_unit) if bill else NOTHING,
+        once=money(bill.setup) if bill else NOTHING,
         variables=str(len(plan.buy.measure)) if plan else NOTHING,
+        records=f"{bill.records:,}" if bill else NOTHING,
+        started=f"{bill.started:,}" if bill else NOTHING,
+        **precision_cells(plan.precision if plan else None),
         estimand=estimand(answer.route, study),
-        leans_on=leans_on(answer.route, effect) if plan else (),
+        leans_on=tuple(leanings(study, effect, answer.route, plan))
+        if plan and not is_shown
+        else (),
         reason=beyond_limits(answer, effect, study),
         witnesses=tuple(
             sentence(each, effect, answer.route, study.unmeasurable) for each in answer.witnesses
         ),
     )
+
+
+def precision_cells(precision: Precision | None) -> dict[str, str]:
+    """Return what a plan achieves, a short text each; empty where it is not known."""
+    if precision is None:
+        return dict.fromkeys(PRECISION_CELLS, "")
+    worst = next((f"{share}, {name}" for name, share in bias_sources(precision).items()), "")
+    f = precision.first_stage_f
+    cells = (
+        f"± {at_most(precision.half_width)}",
+        percent_at_least(precision.power),
+        percent_at_least(precision.coverage),
+        percent(Fraction(precision.bias_bound)) if precision.bias_bound > FORGIVEN else "none",
+        worst,
+        "" if f is None else at_least(f),
+    )
+    return dict(zip(PRECISION_CELLS, cells, strict=True))
+
+
+PRECISION_CELLS = ("half_width", "power", "coverage", "bias", "worst", "first_stage")
+
+
+def precision_notes(plan: Plan, study: Study, effect: Effect) -> Iterable[Note]:
+    """Return what a plan achieves, line by line, for the workbook."""
+    precision = plan.precision
+    yield Note("complete records", f"{plan.buy.bill.records:,}")
+    yield Note("units started", f"{plan.buy.bill.started:,}")
+    if precision is None:
+        yield Note("precision", f"not worked out: {why_unknown(study, effect)}")
+        return
+    cells = precision_cells(precision)
+    yield Note("effects are in", effect_unit(study, effect))
+    yield Note("effect that is taken to be true", figure(precision.effect))
+    yield Note("what the readings make of it", figure(precision.limit))
+    yield Note(f"{interval_name(study)} (half-width)", cells["half_width"])
+    yield Note("chance to detect the effect (power)", cells["power"])
+    yield Note("chance that the interval holds the effect (coverage)", cells["coverage"])
+    yield Note("bias by errors of readings, up to about", cells["bias"])
+    for name, share in bias_sources(precision).items():
+        yield Note(f"  alone by {name}", share)
+    if cells["first_stage"]:
+        yield Note("strength of the instrument (first-stage F)", cells["first_stage"])

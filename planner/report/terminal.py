@@ -4,7 +4,7 @@ Text of the user is never read as markup. Everything is legible without colour: 
 capitals, and nothing is said by colour alone.
 """
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Collection, Iterable, Sequence
 
 from rich.cells import cell_len
 from rich.console import Console, Group, JustifyMethod, RenderableType
@@ -12,16 +12,22 @@ from rich.padding import Padding
 from rich.table import Table
 from rich.text import Text
 
-from planner.report.rows import Note, RouteRow
+from planner.report.rows import Bought, Note, RouteRow
 from planner.report.view import View
 
 __all__ = ["print_report", "report"]
 
 INDENT = (0, 0, 0, 2)
+GLUE = "\ufdd0"
+"""Holds a number and its sign together when lines are wrapped; no text has this character."""
+HEADING_CELLS = 22
+"""Longer headings of the comparison run over two lines."""
+NOTHING = "–"
 MOST_CELLS = 22
 """A name longer than this is folded."""
-GAP = 2
-"""Blanks between columns of figures."""
+GAP, LEAST_GAP = 2, 1
+"""Blanks between columns of figures, and where a table would not fit otherwise."""
+USUAL_WIDTH = 80
 LEAST_WIDTH = 60
 """Narrower windows get lines of this length."""
 LEGEND = "a → b: a acts on b. What stands in brackets cannot be measured."
@@ -31,9 +37,10 @@ PARTS = {
     "instrument": "instrument",
     "mediator": "mediators (the mechanism)",
     "covariate": "covariates (to adjust for)",
+    "extra": "extras (validity could do without any one of them)",
     "component": "components (shared costs)",
 }
-"""The heading under which each part stands in the list of purchases."""
+"""The heading under which each part stands in the list of purchases, in this order."""
 
 
 def print_report(view: View, console: Console) -> None:
@@ -45,14 +52,24 @@ def print_report(view: View, console: Console) -> None:
     console.width = max(console.width, LEAST_WIDTH, needed_width(view))
     with console.capture() as captured:
         console.print(report(view), markup=False, highlight=False)
-    for line in captured.get().splitlines():
+    for line in captured.get().replace(GLUE, " ").splitlines():
         console.file.write(line.rstrip() + "\n")
 
 
 def needed_width(view: View) -> int:
     """Return the cells that the widest table of figures takes."""
     tables = (purchase_columns(view), bill_columns(view))
-    return max(2 + sum(columns.values()) + GAP * len(columns) for columns in tables)
+    return max(width_of(columns.values(), gap_of(columns.values())) for columns in tables)
+
+
+def width_of(widths: Collection[int], gap: int) -> int:
+    """Return the cells that a table of figures takes, its indent included."""
+    return 2 + sum(widths) + gap * (len(widths) - 1)
+
+
+def gap_of(widths: Collection[int]) -> int:
+    """Return how far apart the columns of a table of figures stand."""
+    return GAP if width_of(widths, GAP) <= USUAL_WIDTH else LEAST_GAP
 
 
 def report(view: View) -> Group:
@@ -60,14 +77,17 @@ def report(view: View) -> Group:
     beyond = f" (the plan beyond the limits, by {view.shown_plan})" if view.shown_plan else ""
     sections: list[tuple[str, list[RenderableType]]] = [
         ("ANSWER", paragraphs(view.answer)),
+        (f"WHAT THE PRICE LEANS ON{beyond}", bullets(view.leans_on)),
+        ("TAKE CARE", bullets(view.cautions)),
+        ("THE ROUTES SIDE BY SIDE", side_by_side(view) if view.routes else []),
         (f"WHAT TO BUY{beyond}", [Text(LEGEND), purchases(view)] if view.bought else []),
         ("DO NOT ADJUST FOR", [named(view.never)] if view.never else []),
-        ("WHAT IT LEANS ON", bullets(view.leans_on)),
-        ("TAKE CARE", bullets(view.cautions)),
         ("WHAT ONE UNIT BEARS", [named(view.burdens)] if view.burdens else []),
         (f"THE BILL{beyond}", [bill(view)] if view.bill else []),
-        ("THE ROUTES SIDE BY SIDE", [side_by_side(view)] if view.routes else []),
-        ("WHY EACH ROUTE IS OPEN OR NOT", [reasons(view.routes)] if view.routes else []),
+        (
+            "WHY EACH ROUTE IS OPEN OR NOT, AND WHAT IT LEANS ON",
+            [reasons(view.routes)] if view.routes else [],
+        ),
         ("MEASURABLE, BUT NOT NEEDED", [named(view.left_out)] if view.left_out else []),
         ("ALSO GOOD TO KNOW", bullets(view.notes)),
     ]
@@ -82,9 +102,14 @@ def report(view: View) -> Group:
     return Group(*parts)
 
 
+def prose(text: str) -> Text:
+    """Return text that is wrapped, but not between a number and its sign."""
+    return Text(text.replace(" %", f"{GLUE}%").replace("± ", f"±{GLUE}"))
+
+
 def paragraphs(lines: Iterable[str]) -> list[RenderableType]:
     """Return a line of text each."""
-    return [Text(line) for line in lines]
+    return [prose(line) for line in lines]
 
 
 def bullets(lines: Iterable[str]) -> list[RenderableType]:
@@ -94,7 +119,7 @@ def bullets(lines: Iterable[str]) -> list[RenderableType]:
         return []
     table = Table.grid(padding=(0, 1, 0, 0))
     for line in entries:
-        table.add_row(Text("-"), Text(line))
+        table.add_row(Text("-"), prose(line))
     return [table]
 
 
@@ -104,7 +129,7 @@ def named(notes: Iterable[Note]) -> Table:
     table.add_column(overflow="fold", max_width=24)
     table.add_column(overflow="fold")
     for note in notes:
-        table.add_row(Text(note.name), Text(note.text))
+        table.add_row(Text(note.name), prose(note.text))
     return table
 
 
@@ -135,22 +160,29 @@ def purchases(view: View) -> Group:
     heads, *figures = purchase_figures(view)
     parts: list[RenderableType] = [figures_line(heads, widths, "italic")]
     part = ""
-    for row, cells in zip(view.bought, figures, strict=False):
-        if PARTS[row.part] != part:
-            part = PARTS[row.part]
+    lines = list(zip(view.bought, figures, strict=False))
+    order = list(PARTS)
+    for row, cells in sorted(lines, key=lambda line: order.index(part_of(line[0]))):
+        if PARTS[part_of(row)] != part:
+            part = PARTS[part_of(row)]
             parts.append(Text(part, style="italic"))
         parts.append(figures_line(cells, widths, "bold"))
         about = ": ".join(filter(None, (row.how, row.why)))
-        parts.append(Padding(Text(about), (0, 0, 0, 4)))
+        parts.append(Padding(prose(about), (0, 0, 0, 4)))
     sums = figures[len(view.bought) :]
     return Group(*parts, *(figures_line(cells, widths, "bold") for cells in sums))
+
+
+def part_of(row: Bought) -> str:
+    """Return under which heading a purchase stands."""
+    return "extra" if row.is_extra else row.part
 
 
 def figures_line(
     cells: Sequence[str], widths: Sequence[int], style: str, *, names: int = 2
 ) -> Table:
     """Return one line: some names, then numbers, which stand to the right of their column."""
-    table = Table.grid(padding=(0, GAP, 0, 0))
+    table = Table.grid(padding=(0, gap_of(widths), 0, 0))
     for number, width in enumerate(widths):
         justify: JustifyMethod = "left" if number < names else "right"
         table.add_column(width=width, overflow="fold", justify=justify)
@@ -187,32 +219,47 @@ def bill(view: View) -> Group:
     )
 
 
-def side_by_side(view: View) -> Table:
-    """Return the routes beside each other."""
-    routes = view.routes
+def side_by_side(view: View) -> list[RenderableType]:
+    """Return the routes beside each other; a line in which nothing stands is left out."""
+    table = Table(box=None, padding=(0, GAP, 0, 0), show_edge=False, header_style="italic")
+    table.add_column("", overflow="fold", width=HEADING_CELLS)
+    for route in view.routes:
+        table.add_column(Text(route.name), overflow="fold", ratio=1)
+    for heading, cells in comparison(view):
+        if any(cells):
+            table.add_row(prose(heading), *(prose(cell or NOTHING) for cell in cells))
+    known = any(route.half_width for route in view.routes)
+    return [table, Text(f"Intervals are in {view.effect_unit}.")] if known else [table]
+
+
+def comparison(view: View) -> Iterable[tuple[str, list[str]]]:
+    """Return the lines of the comparison: plain words, the technical one in brackets."""
     # Beside a total that holds surcharges, what goes into it is before them.
     direct = ", direct" if len(view.sums) > 1 else ""
-    table = Table(box=None, padding=(0, 2, 0, 0), show_edge=False, header_style="italic")
-    table.add_column("")
-    for route in routes:
-        table.add_column(Text(route.name), overflow="fold", ratio=1)
-    for heading, cells in (
-        ("status", [route.status for route in routes]),
-        ("total", [route.total for route in routes]),
-        (f"each unit{direct}", [route.each for route in routes]),
-        (f"set-up{direct}", [route.once for route in routes]),
-        ("variables", [route.variables for route in routes]),
-        ("estimates", [route.estimand for route in routes]),
-        ("leans on", ["\n".join(f"- {clause}" for clause in route.leans_on) for route in routes]),
-    ):
-        table.add_row(Text(heading), *(Text(cell) for cell in cells))
-    return table
+    routes = view.routes
+    yield "status", [route.status for route in routes]
+    yield "total", [route.total for route in routes]
+    yield f"each unit{direct}", [route.each for route in routes]
+    yield f"set-up{direct}", [route.once for route in routes]
+    yield "variables", [route.variables for route in routes]
+    yield "complete records", [route.records for route in routes]
+    yield "units started", [route.started for route in routes]
+    yield f"{view.interval} (half-width)", [route.half_width for route in routes]
+    yield "chance to detect the effect (power)", [route.power for route in routes]
+    yield "interval holds the effect (coverage)", [route.coverage for route in routes]
+    yield "bias by poor readings, up to about", [route.bias for route in routes]
+    yield "  largest alone", [route.worst for route in routes]
+    yield "instrument's strength (first-stage F)", [route.first_stage for route in routes]
+    yield "estimates", [route.estimand for route in routes]
 
 
 def reasons(routes: Iterable[RouteRow]) -> Group:
-    """Return why each route is open or not, with what shows it."""
+    """Return why each route is open or not, with what shows it, and what it would lean on."""
     parts: list[RenderableType] = []
     for route in routes:
-        parts.append(Text(f"{route.name}: {route.reason}"))
+        parts.append(prose(f"{route.name}: {route.reason}"))
         parts += [Padding(each, INDENT) for each in bullets(route.witnesses)]
+        if route.leans_on:
+            parts.append(Text("Its price leans on"))
+            parts += [Padding(each, INDENT) for each in bullets(route.leans_on)]
     return Group(*parts)

@@ -3,7 +3,8 @@
 from dataclasses import dataclass
 from fractions import Fraction
 
-from planner.plan import EffectAnswer, Recommendation, RouteAnswer
+from planner.plan import EffectAnswer, Plan, Recommendation, RouteAnswer
+from planner.report.achieved import effect_unit, interval_name, joint_errors, leanings
 from planner.report.answers import (
     answer_sentences,
     cautions,
@@ -19,12 +20,13 @@ from planner.report.rows import (
     bought_rows,
     burden_notes,
     left_out_notes,
+    precision_notes,
     route_row,
     sum_notes,
 )
 from planner.routes import ROUTES
 from planner.study import Effect, Study
-from planner.words import conjoined, leans_on
+from planner.words import conjoined
 
 __all__ = ["View", "view_of"]
 
@@ -50,6 +52,12 @@ class View:
     burdens: tuple[Note, ...]
     routes: tuple[RouteRow, ...]
     """Empty where one reason closes them all."""
+    interval: str
+    """What the confidence interval is called."""
+    effect_unit: str
+    """In what units effects and intervals are told."""
+    precision: tuple[Note, ...]
+    """What the shown plan achieves, line by line."""
     left_out: tuple[Note, ...]
     """What is of no use, and why."""
     notes: tuple[str, ...]
@@ -72,19 +80,42 @@ def view_of(answer: Recommendation) -> View:
         bought=tuple(bought_rows(plan, route, effect, study)) if plan else (),
         sums=tuple(sum_notes(plan.buy.bill)) if plan else (),
         never=left_out_notes(plan, route, effect, study, only_never=True) if plan else (),
-        leans_on=(*leans_on(route, effect), DIAGRAM) if shown else (),
+        leans_on=leaning(study, effect, route, plan) if plan else (),
         cautions=tuple(cautions(buy, study)) if buy else (),
         bill=tuple(bill_rows(buy.bill)) if buy else (),
         burdens=tuple(burden_notes(buy, study)) if buy else (),
         routes=()
         if same_for_all(effect_answer)
-        else tuple(route_row(each, effect, study) for each in effect_answer.routes),
+        else tuple(
+            route_row(
+                each,
+                effect,
+                study,
+                is_recommended=each.route == effect_answer.recommended,
+                is_shown=each is shown,
+            )
+            for each in effect_answer.routes
+        ),
+        interval=interval_name(study),
+        effect_unit=effect_unit(study, effect, "SDs (standard deviations)"),
+        precision=tuple(precision_notes(plan, study, effect)) if plan else (),
         left_out=left_out_notes(plan, route, effect, study, only_never=False) if plan else (),
-        notes=tuple(closing_notes(study, buy)),
+        notes=tuple(closing_notes(study, route, plan, buy)),
     )
 
 
-DIAGRAM = "the diagram itself: an arrow that is missing from it can undo any plan"
+DIAGRAM = "the diagram: an arrow that is missing from it can undo any plan"
+STRENGTHS = (
+    "the diagram and its strengths: a missing arrow can undo any plan, and records and bias are"
+    " only as good as the strengths"
+)
+LINES = "effects that follow straight lines: the planned analysis is linear"
+
+
+def leaning(study: Study, effect: Effect, route: str, plan: Plan) -> tuple[str, ...]:
+    """Return all that the shown price leans on."""
+    diagram = DIAGRAM if plan.precision is None else STRENGTHS
+    return (*leanings(study, effect, route, plan), *joint_errors(study, plan), diagram, LINES)
 
 
 def shown_route(answer: EffectAnswer) -> RouteAnswer | None:

@@ -1,7 +1,8 @@
 """The hand-over workbook: the measurement list, and the bill with live formulas.
 
 Changing a price, a yield, a share or the number of records in the bill updates units, batches and
-totals there and in the measurement list; as it is written, its total is the plan's.
+totals there and in the measurement list; as it is written, its total is the plan's. What the plan
+achieves stands on a sheet of its own, as text: it does not follow such changes.
 """
 
 import io
@@ -51,6 +52,7 @@ MEASURE_COLUMNS = (
     ("in all", 14),
     ("why", 70),
 )
+PRECISION_COLUMNS = (("what", 56), ("as planned, on the records of the plan", 44))
 TOTAL = 5
 """Rows from the last purchase to the total of the bill."""
 FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\ud800-\udfff\ufffe\uffff]")
@@ -67,6 +69,7 @@ def workbook_bytes(view: View, study: Study, buy: Buy) -> bytes:
     assert sheet is not None, "a new workbook has a sheet"
     write_measurements(sheet, view)
     write_bill(book.create_sheet("bill"), view, study, buy)
+    write_precision(book.create_sheet("precision"), view)
     stream = io.BytesIO()
     book.save(stream)
     return stream.getvalue()
@@ -92,6 +95,20 @@ def write_measurements(sheet: "Worksheet", view: View) -> None:
     sheet.freeze_panes = f"B{FIRST_LINE}"
 
 
+def write_precision(sheet: "Worksheet", view: View) -> None:
+    """Write what the plan achieves on its records, and what that leans on."""
+    write_text(sheet["A1"], view.title, bold=True)
+    write_text(sheet["A2"], view.subject)
+    write_heading(sheet, 4, PRECISION_COLUMNS)
+    for row, note in enumerate(view.precision, 5):
+        write_text(sheet.cell(row, 1), note.name)
+        write_text(sheet.cell(row, 2), note.text)
+    first = 5 + len(view.precision) + 1
+    write_text(sheet.cell(first, 1), "the price leans on", bold=True)
+    for row, clause in enumerate(view.leans_on, first + 1):
+        write_text(sheet.cell(row, 1), clause)
+
+
 def write_bill(sheet: "Worksheet", view: View, study: Study, buy: Buy) -> None:
     """Write the bill: terms on top, a row for each purchase, surcharges and the total below."""
     names: list[Name] = [*buy.measure.items(), *buy.bill.components]
@@ -104,7 +121,7 @@ def write_bill(sheet: "Worksheet", view: View, study: Study, buy: Buy) -> None:
         purchase = study.prices.purchase(name)
         write_text(sheet.cell(row, 1), shown_name(name))
         write_text(sheet.cell(row, 2), "component" if isinstance(name, str) else "way")
-        write_line(sheet, row, study, purchase)
+        write_line(sheet, row, study, buy, purchase)
         needs = sorted(rows[need] for need in needed_by(purchase.needs, study.prices))
         yields = ",".join(f"J{need}" for need in needs)
         write_value(sheet.cell(row, 3), f"=PRODUCT({yields})" if needs else 1)
@@ -130,9 +147,9 @@ def write_terms(sheet: "Worksheet", study: Study, bill: Bill, last: int) -> None
     write_text(sheet.cell(9, 2), study.currency)
 
 
-def write_line(sheet: "Worksheet", row: int, study: Study, purchase: Purchase) -> None:
+def write_line(sheet: "Worksheet", row: int, study: Study, buy: Buy, purchase: Purchase) -> None:
     """Write the numbers of one purchase, its units and its amount as formulas."""
-    places = rounding_places(study.terms.records)
+    places = rounding_places(buy.bill.started)
     batch = purchase.batch
     cells: dict[int, Fraction | int | str] = {
         4: f"=ROUNDUP(ROUND($B$6*C{row},{places}),0)",

@@ -6,18 +6,18 @@ __all__ = ["WORDS"]
 
 WORDS = Words(
     title="an instrument",
-    analysis="use {instruments} as the instrument, adjusting for {covariates}: by the diagram it"
-    " then reaches {outcome} only by way of {treatment}",
-    bare_analysis="use {instruments} as the instrument: by the diagram it reaches {outcome} only by"
-    " way of {treatment}",
+    analysis="use {instruments} as the instrument, adjusting for {covariates} (by the diagram it"
+    " then reaches {outcome} only by way of {treatment})",
+    bare_analysis="use {instruments} as the instrument (by the diagram it reaches {outcome} only by"
+    " way of {treatment})",
     estimand="average effect if it is the same for all; else the effect in compliers",
     leans_on=(
-        "the instrument reaches {outcome} by way of {treatment} only, the covariates adjusted for"
+        "{instruments} reaches {outcome} by way of {treatment} only, the covariates adjusted for"
         " (statisticians call this exclusion)",
-        "either the effect is the same for every unit, or the instrument pushes nobody's"
+        "either the effect is the same for every unit, or {instruments} pushes nobody's"
         " {treatment} the other way; in the second case the result holds only for the units that"
         " it moves (compliers)",
-        "the instrument moves {treatment} strongly (a strong first stage)",
+        "{instruments} moves {treatment} strongly enough{first_stage}",
     ),
     sentences={
         "closes": "left out, {path} would pass for the instrument's work",

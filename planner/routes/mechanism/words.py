@@ -10,11 +10,11 @@ WORDS = Words(
     bare_analysis="follow the effect through {mediators}, with no covariates",
     estimand="average effect",
     leans_on=(
-        "{treatment} acts on {outcome} only by way of the mediators",
+        "the whole effect of {treatment} on {outcome} runs through {mediators} (statisticians call"
+        " this full mediation)",
         "no common cause of the mediators and {treatment}, or of the mediators and {outcome}, is"
         " missing from the diagram",
-        "every value of the mediators occurs whatever {treatment} is (statisticians call this"
-        " positivity)",
+        "every value of the mediators occurs whatever {treatment} is (positivity)",
     ),
     sentences={
         "closes": "left out, {path} would pass for part of the mechanism",
