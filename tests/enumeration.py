@@ -44,7 +44,8 @@ def graph_of(study: dict[str, Any]) -> nx.DiGraph:
     for name, variable in study["variables"].items():
         graph.add_node(name)
         graph.add_edges_from((cause, name) for cause in variable["caused_by"])
-    for number, pair in enumerate(study.get("hidden_common_causes", [])):
+    for number, each in enumerate(study.get("hidden_common_causes", [])):
+        pair = each["of"] if isinstance(each, dict) else each
         graph.add_edges_from((f"hidden {number}", name) for name in pair)
     return graph
 
@@ -144,17 +145,31 @@ class Bills:
         least = Fraction(str(limits.get("least_reliability", 0)))
         if any(Fraction(str(way.get("reliability", 1))) < least for way in ways):
             return None
-        bought = {name for name, entry in self.components.items() if entry.get("always")}
-        bought |= {need for name in bought for need in self.needs(self.components[name])}
-        bought |= {need for way in ways for need in self.needs(way)}
-        purchases = ways + [self.components[name] for name in bought]
-        kept = self.usable * prod(Fraction(str(p.get("yields", 1))) for p in purchases)
-        started = ceil(self.study["size"]["records"] / kept)
-        minutes = sum(Fraction(str(p.get("takes", {}).get("minutes", 0))) for p in purchases)
-        total = sum(self.line(p, started) for p in purchases) * self.surcharge
+        total, started = self.priced(measure, self.study["size"]["records"])
+        minutes = self.minutes(measure)
         if started > limits.get("frame_size", started) or total > limits.get("budget", total):
             return None
         return None if minutes > limits.get("minutes", minutes) else (total, started)
+
+    def purchases(self, measure: dict[str, str]) -> list[dict[str, Any]]:
+        """The chosen ways, and every component that comes with them."""
+        ways = [self.ways(name)[way] for name, way in measure.items()]
+        bought = {name for name, entry in self.components.items() if entry.get("always")}
+        bought |= {need for name in bought for need in self.needs(self.components[name])}
+        bought |= {need for way in ways for need in self.needs(way)}
+        return ways + [self.components[name] for name in bought]
+
+    def priced(self, measure: dict[str, str], records: int) -> tuple[Fraction, int]:
+        """Total and units started for so many records."""
+        purchases = self.purchases(measure)
+        kept = self.usable * prod(Fraction(str(p.get("yields", 1))) for p in purchases)
+        started = ceil(records / kept)
+        return sum(self.line(p, started) for p in purchases) * self.surcharge, started
+
+    def minutes(self, measure: dict[str, str]) -> Fraction:
+        """What one unit has to bear."""
+        taken = [p.get("takes", {}).get("minutes", 0) for p in self.purchases(measure)]
+        return sum((Fraction(str(each)) for each in taken), Fraction(0))
 
     def line(self, entry: dict[str, Any], started: int) -> Fraction:
         """One purchase for so many units started."""

@@ -36,7 +36,7 @@ import numpy as np
 
 from planner.bounds import Basis, Floor, Sight, View, one_noisy, summed
 from planner.precision import Matrix, keep_of
-from planner.ranges import Vector, distances, increments, product_ranges, slope_range
+from planner.ranges import TINY, Vector, distances, increments, product_ranges, slope_range
 
 __all__ = ["floor"]
 
@@ -75,14 +75,20 @@ def floor(sight: Sight) -> Floor:
         bias=float(distances(low, high, sight.effect)) / abs(sight.effect),
         decided_bias=decided,
         more_bias=more,
-        related=np.maximum(0.1 * related, relations(given_x)),
+        related=np.maximum(0.1 * related, relations(view, given_x)),
     )
 
 
-def relations(given_x: View) -> Vector:
-    """Return what share of the mediators' variance given x each of R takes out."""
-    found: Vector = np.max([given_x.shares(m) for m in range(FIRST, given_x.first)], axis=0)
-    return found
+def relations(view: View, given_x: View) -> Vector:
+    """Return how far each of R widens the ranges of a and b: where it is related to both ends."""
+    found = []
+    for m in range(FIRST, view.first):
+        for seen, one, other in ((view, X, m), (given_x, m, Y)):
+            slope = seen.of(one, other)[0] / seen.of(one, one)[0]
+            left = seen.on(other)[:, 0] - slope * seen.on(one)[:, 0]
+            joined = np.abs(seen.on(one)[:, 0] * left) / (abs(seen.of(one, other)[0]) + TINY)
+            found.append(joined / (np.diagonal(seen.s[0])[seen.first :] + TINY))
+    return np.asarray(np.max(found, axis=0))
 
 
 Coefficients = list[tuple[Vector, Vector]]
