@@ -1,8 +1,16 @@
-"""The time that a search may take."""
+"""The time that a search may take, and how it tells of its progress."""
 
+from collections.abc import Callable
 from time import monotonic
 
-__all__ = ["Deadline"]
+__all__ = ["Deadline", "Tell", "tell_nobody"]
+
+Tell = Callable[[str], None]
+"""Is told what is being worked on."""
+
+
+def tell_nobody(_: str) -> None:
+    """Tell nobody what is being worked on."""
 
 
 class Deadline:

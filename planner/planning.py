@@ -1,6 +1,6 @@
 """From a study to its recommendation: claims, searches, limits and reasons."""
 
-from collections.abc import Callable, Iterable
+from collections.abc import Iterable
 from dataclasses import dataclass, replace
 from fractions import Fraction
 
@@ -8,7 +8,7 @@ from costs.faults import Fault, FaultyInput, Spot
 from costs.prices import shown_name
 from costs.tally import Overflow
 from planner.claims import Claim
-from planner.deadline import Deadline
+from planner.deadline import Deadline, Tell, tell_nobody
 from planner.diagram import Diagram
 from planner.findings import Finding, Reason, reason_of
 from planner.limits import demand_of, exceeded, limits_of, within_limits
@@ -35,13 +35,6 @@ NEVER = frozenset(
 )
 """Kinds of reasons that forbid to condition on a variable."""
 
-Report = Callable[[str], None]
-"""Is told what is being worked on."""
-
-
-def tell_nobody(_: str) -> None:
-    """Tell nobody what is being worked on."""
-
 
 @dataclass(frozen=True, kw_only=True, slots=True)
 class Question:
@@ -53,7 +46,12 @@ class Question:
     demand: Demand | None
     """What is demanded of the estimate; None where precision cannot be worked out."""
     seconds: float
-    report: Report
+    report: Tell
+
+    def telling(self, what: str) -> Tell:
+        """Say what is worked on, and return how to say how far it has come."""
+        self.report(what)
+        return lambda progress: self.report(f"{what}: {progress}")
 
     def claim(self, route: str) -> Claim:
         """Return the claim that a route leads to the effect."""
@@ -62,9 +60,7 @@ class Question:
         )
 
 
-def recommend(
-    study: Study, *, seconds: float = 60.0, report: Report = tell_nobody
-) -> Recommendation:
+def recommend(study: Study, *, seconds: float = 60.0, report: Tell = tell_nobody) -> Recommendation:
     """Return the cheapest plan of a study, with proof and reasons, and what every route would take.
 
     Parameters
@@ -134,11 +130,11 @@ def effect_answer(question: Question) -> tuple[EffectAnswer, Buy | None]:
     claims = [question.claim(route) for route in question.study.routes]
     closed = {claim.route: closed_route(question, claim) for claim in claims}
     open_claims = tuple(claim for claim in claims if closed[claim.route] is None)
-    question.report("all routes")
+    tell = question.telling("all routes")
     best: Answer | NothingFound = NothingFound(proved=True)
     if open_claims:
         within = within_limits(question.study, demand=question.demand)
-        best = cheapest([Choice(open_claims)], within, Deadline(question.seconds))
+        best = cheapest([Choice(open_claims)], within, Deadline(question.seconds), tell)
     routes = tuple(closed[claim.route] or open_route(question, claim, best) for claim in claims)
     plans = {each.route: each.plan for each in routes if each.plan is not None}
     recommended = min(plans, key=lambda route: preference(plans[route]), default=None)
@@ -224,8 +220,8 @@ def open_route(question: Question, claim: Claim, best: Answer | NothingFound) ->
     own = best if isinstance(best, Answer) and best.opened[0][0] is claim else None
     answer: Answer | NothingFound = best
     if not best.proved or (own is None and isinstance(best, Answer)):
-        question.report(ROUTES[claim.route].words.title)
-        answer = better(own, search(question, claim, deadline))
+        tell = question.telling(ROUTES[claim.route].words.title)
+        answer = better(own, search(question, claim, deadline, tell))
     if isinstance(answer, NothingFound):
         return route_beyond_limits(question, claim, deadline, settled=answer.proved)
     return feasible_route(question, claim, answer)
@@ -256,11 +252,11 @@ def feasible_route(question: Question, claim: Claim, answer: Answer) -> RouteAns
 
 
 def search(
-    question: Question, claim: Claim, deadline: Deadline, lifted: Iterable[str] = ()
+    question: Question, claim: Claim, deadline: Deadline, tell: Tell, lifted: Iterable[str] = ()
 ) -> Answer | NothingFound:
     """Return the cheapest purchase for one claim, some limits lifted."""
     within = within_limits(question.study, lifted, question.demand, claim.route)
-    return cheapest([Choice((claim,))], within, deadline)
+    return cheapest([Choice((claim,))], within, deadline, tell)
 
 
 def route_beyond_limits(
@@ -276,10 +272,10 @@ def route_beyond_limits(
     settled
         Whether it is sure that there is no plan within the limits.
     """
-    question.report(f"{ROUTES[claim.route].words.title}, beyond the limits")
+    tell = question.telling(f"{ROUTES[claim.route].words.title}, beyond the limits")
     study, demand = question.study, question.demand
     limits = limits_of(study, demand, claim.route)
-    alone = [search(question, claim, deadline, [limit]) for limit in limits]
+    alone = [search(question, claim, deadline, tell, [limit]) for limit in limits]
     helping = [found for found in alone if isinstance(found, Answer)]
     for found in helping:
         if not exceeded(study, found, demand, claim.route):
@@ -287,7 +283,7 @@ def route_beyond_limits(
             return feasible_route(question, claim, found)
     together = not helping
     if together:
-        unlimited = search(question, claim, deadline, limits)
+        unlimited = search(question, claim, deadline, tell, limits)
         if isinstance(unlimited, NothingFound):
             return route_out_of_reach(claim, proved=settled and unlimited.proved)
         helping = [unlimited]

@@ -12,7 +12,7 @@ from costs.bill import Bill, bill_for
 from costs.prices import WayName
 from costs.tally import Tally
 from planner.claims import Claim, Roles
-from planner.deadline import Deadline
+from planner.deadline import Deadline, Tell, tell_nobody
 from planner.joint import JointStudy, cheapest_study, weighed_up
 from planner.precision import Precision
 from planner.program import Choice, Found, NothingFound, Within, cheapest_purchase
@@ -47,7 +47,7 @@ class Answer:
 
 
 def cheapest(
-    choices: Sequence[Choice], within: Within, deadline: Deadline
+    choices: Sequence[Choice], within: Within, deadline: Deadline, tell: Tell = tell_nobody
 ) -> Answer | NothingFound:
     """Return the cheapest purchase with which one claim of each choice comes true.
 
@@ -59,14 +59,18 @@ def cheapest(
         Prices, terms and limits.
     deadline
         A search that needs more time answers with the best purchase so far, and its bound.
+    tell
+        Is told how far the search has come.
     """
     if within.demand is not None:
         (choice,) = choices
-        return cheapest_sized(choice, within, deadline)
+        return cheapest_sized(choice, within, deadline, tell)
     return cheapest_on_records(choices, within, deadline)
 
 
-def cheapest_sized(choice: Choice, within: Within, deadline: Deadline) -> Answer | NothingFound:
+def cheapest_sized(
+    choice: Choice, within: Within, deadline: Deadline, tell: Tell
+) -> Answer | NothingFound:
     """Return the cheapest study whose precision is known, and good enough.
 
     On a fixed number of records the integer program answers, if its plan keeps the limits of bias
@@ -86,7 +90,7 @@ def cheapest_sized(choice: Choice, within: Within, deadline: Deadline) -> Answer
             if weighed is not None:
                 return answer_to(weighed, within)
             hint = Found(bill=plain.bill, opened=plain.opened, bound=bound, proved=plain.proved)
-    study = cheapest_study(choice.claims, within, deadline, hint)
+    study = cheapest_study(choice.claims, within, deadline, tell, hint)
     if isinstance(study, NothingFound):
         return replace(study, bound=bound)
     return answer_to(replace(study, bound=max(study.bound, bound)), within)

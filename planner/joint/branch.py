@@ -18,7 +18,7 @@ import numpy as np
 
 from planner.bounds import Floor, Sight
 from planner.claims import Roles, Separation
-from planner.deadline import Deadline
+from planner.deadline import Deadline, Tell, tell_nobody
 from planner.diagram import Nodes
 from planner.joint.opening import downhill
 from planner.joint.purse import Basket, Bound, Options, least_total
@@ -30,6 +30,8 @@ __all__ = ["Branching", "Node", "Search"]
 BEGINNINGS = 3
 """Roots from whose rounded drafts the search goes downhill before anything else."""
 IMPROVING_SHARE = 0.1
+TELL_AFTER = 100
+"""Nodes between two words on how far the search has come."""
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
@@ -295,8 +297,9 @@ def least_more(floor: Floor, basket: Basket) -> float:
 class Search:
     """The queue of nodes, and the best study so far."""
 
-    def __init__(self, deadline: Deadline, *, ties: bool) -> None:
+    def __init__(self, deadline: Deadline, *, ties: bool, tell: Tell = tell_nobody) -> None:
         self.deadline = deadline
+        self.tell = tell
         self.ties = ties
         self.best: tuple[Space, Settled] | None = None
         self.nodes = 0
@@ -414,7 +417,7 @@ class Search:
         float
             What no study that was not looked at beats; ∞ where none is left.
         """
-        queue = Queue()
+        queue, told = Queue(), 0
         for branching in branchings:
             self.push(queue, branching, branching.roots())
         for branching, node in queue.lowest(BEGINNINGS):
@@ -423,12 +426,22 @@ class Search:
         while queue.entries and queue.bound <= self.cutoff:
             if not self.deadline.left:
                 return queue.bound
+            if self.nodes - told >= TELL_AFTER:
+                told = self.nodes
+                self.tell(self.progress(queue.bound))
             branching, node = queue.pop()
             best = self.best
             self.push(queue, branching, branching.children(node))
             if self.best is not None and self.best is not best:
                 self.improve(self.best[0], self.best[1].draft)
         return inf
+
+    def progress(self, bound: float) -> str:
+        """Return how far the search has come, in words."""
+        if self.best is None:
+            return "no study within the limits yet"
+        gap = max(0.0, 1 - bound / float(self.best[1].score))
+        return f"{float(self.best[1].bill.total):,.2f} so far, at most {gap:.1%} from the best"
 
     def push(self, queue: "Queue", branching: Branching, nodes: Iterable[Node]) -> None:
         """Put nodes into the queue, as far as they can lead to anything; look at leaves at once."""

@@ -7,7 +7,7 @@ from math import inf
 
 from costs.bill import Bill
 from planner.claims import Claim, Roles
-from planner.deadline import Deadline
+from planner.deadline import Deadline, Tell, tell_nobody
 from planner.joint.branch import Branching, Search
 from planner.joint.opening import downhill
 from planner.joint.space import Draft, Settled, Space
@@ -51,7 +51,11 @@ class JointStudy:
 
 
 def cheapest_study(
-    claims: Sequence[Claim], within: Within, deadline: Deadline, hint: Found | None = None
+    claims: Sequence[Claim],
+    within: Within,
+    deadline: Deadline,
+    tell: Tell = tell_nobody,
+    hint: Found | None = None,
 ) -> JointStudy | NothingFound:
     """Return the cheapest study with which one of the claims comes true, sized to the demand.
 
@@ -62,7 +66,7 @@ def cheapest_study(
     """
     till = Till.of(within.prices, within.terms)
     spaces = {claim.route: Space.of(claim, within, till) for claim in claims}
-    search = Search(deadline, ties=len(within.prices.ways) <= EXACT_TIES)
+    search = Search(deadline, ties=len(within.prices.ways) <= EXACT_TIES, tell=tell)
     for draft, space in opening_drafts(spaces, within, deadline, hint):
         opening = Deadline(deadline.left * OPENING_SHARE)
         search.offer(space, downhill(space, draft, opening))
