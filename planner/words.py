@@ -24,7 +24,7 @@ SHARED = {
     " it can make the estimate wrong",
     "after_treatment": "is a result of {treatment}, {path}",
     "opens": "adjusting for it would let {path} pass for an effect, which it does not as it is",
-    "unlinked": "nothing connects it with {others} here, so it cannot mislead",
+    "unlinked": "no path that could mislead connects it with {others} here",
     "shielded": "adjusting for {others} already stops {path}",
     "selected": "has one and the same value in every row",
     # Why a whole route, or all of them, cannot be taken.

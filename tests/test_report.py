@@ -134,7 +134,7 @@ def test_a_target_says_how_many_records_and_why(told: Callable[..., str]) -> Non
     assert (
         "It takes 53 complete records to detect the effect of 0.25 that the strengths imply (outcome"
         " SDs per treatment SD) with a chance of 80 % (power). To end with so many, start 53 units:"
-        " 1,353.30 EUR in all. Proved: by this diagram, these strengths and these prices, no study by"
+        " 1,353.30 EUR in all. Proved: if the diagram, its strengths and the prices are right, no study by"
         " any route within the limits does as much for less. The best other route, conditioning on"
         " covariates, takes 1,797.20 EUR on 92 records: adjust for c and e."
     ) in page
@@ -167,7 +167,7 @@ def test_money_buys_an_interval(told: Callable[..., str]) -> None:
         "1,353.30 EUR buys 53 complete records and with them a 95 % confidence interval of ± 0.175"
         " (outcome SDs per treatment SD), which detects the effect of 0.25 that the strengths imply"
         " with a chance of 80.3 % (power). To end with so many, start 53 units: 1,353.30 EUR in all."
-        " Proved: by this diagram, these strengths and these prices, no study by any route within the"
+        " Proved: if the diagram, its strengths and the prices are right, no study by any route within the"
         " limits has a narrower interval."
     ) in page
     assert "The best other route, conditioning on covariates, takes 1,346.00 EUR on 60" in page
@@ -208,7 +208,7 @@ def test_a_tie_shows_both(told: Callable[..., str]) -> None:
     page = told(("per_unit: 4, reliability", "per_unit: 12.20, reliability"))
     before, _, _ = page.partition("WHAT THE PRICE LEANS ON")
     assert "A TIE with " in before
-    assert "and 5 % is less than prices and strengths are known to" in before
+    assert "and prices and strengths are not known to within 5 %" in before
     assert "The best other route" not in before
     assert "See it whole with --route" in before
 
@@ -216,7 +216,7 @@ def test_a_tie_shows_both(told: Callable[..., str]) -> None:
 def test_extras_say_what_they_save(told: Callable[..., str]) -> None:
     page = told()
     assert (
-        "extras (validity could do without any one of them) e standard 53 0.10 – 5.30 not needed for"
+        "extras (any one of them could go, not all) e standard 53 0.10 – 5.30 not needed for"
         " validity; without it the same precision would cost 170.70 EUR more"
     ) in page
 

@@ -92,7 +92,7 @@ def size_sentences(study: Study, effect: Effect, plan: Plan) -> str:
         return (
             f"{price_of(money(study), study.currency)} buys {records} and with them a"
             f" {interval(study, precision.half_width)} ({unit}), which detects {detected} with"
-            f" {power}. To end with so many, {start}"
+            f" {power}. To end with so many{on_average(bill)}, {start}"
         )
     if size.half_width is not None:
         wanted = f"for a {interval(study, size.half_width)} ({unit})"
@@ -100,7 +100,12 @@ def size_sentences(study: Study, effect: Effect, plan: Plan) -> str:
         chance = percent(Fraction(str(size.power)))
         wanted = f"to detect {detected} ({unit}) with a chance of {chance} (power)"
     why = first_stage_sets_records(study, precision, bill)
-    return f"It takes {records} {wanted}{why}. To end with so many, {start}"
+    return f"It takes {records} {wanted}{why}. To end with so many{on_average(bill)}, {start}"
+
+
+def on_average(bill: Bill) -> str:
+    """Return that losses are averages, where there are any."""
+    return "" if bill.kept == 1 else " on average"
 
 
 def named_by(study: Study) -> str:

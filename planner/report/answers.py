@@ -113,22 +113,21 @@ def proof(study: Study, buy: Buy, plan: Plan) -> str:
     if not buy.proved:
         return f"Not proved: the time ran out. {gap(study, buy, plan)}"
     known = plan.precision is not None
-    basis = (
-        "this diagram, these strengths and these prices"
-        if known
-        else "this diagram and these prices"
-    )
+    basis = "the diagram, its strengths and the prices" if known else "the diagram and the prices"
     titles = {name: route.words.title for name, route in ROUTES.items()}
     left_out = conjoined(title for name, title in titles.items() if name not in study.routes)
     by = " or ".join(titles[name] for name in study.routes) if left_out else "any route"
-    but = f"; the study leaves out {left_out}" if left_out else ""
+    asked = any("--route" in change for change in study.changes)
+    who = "as you asked, this leaves out" if asked else "the study leaves out"
+    but = f"; {who} {left_out}" if left_out else ""
     within = " within the limits" if limits_of(study) or study.tolerance.bias is not None else ""
+    proved = f"Proved: if {basis} are right, no"
     if study.size.spend is not None:
-        return f"Proved: by {basis}, no study by {by}{within} has a narrower interval{but}."
+        return f"{proved} study by {by}{within} has a narrower interval{but}."
     if study.size.records is not None:
         records = counted(buy.bill.records, "record")
-        return f"Proved: for {records}, by {basis}, no plan by {by}{within} costs less{but}."
-    return f"Proved: by {basis}, no study by {by}{within} does as much for less{but}."
+        return f"{proved} plan for {records} by {by}{within} costs less{but}."
+    return f"{proved} study by {by}{within} does as much for less{but}."
 
 
 def gap(study: Study, buy: Buy, plan: Plan) -> str:
@@ -169,7 +168,7 @@ def tie(study: Study, effect: Effect, chosen: RouteAnswer, other: RouteAnswer) -
     more = "its interval" if study.size.spend is not None else "its price"
     return (
         f"A TIE with {ROUTES[other.route].words.title}, {outline(study, other.plan)}: {more} is"
-        f" only {apart} above, and 5 % is less than {known} known to. Choose by what each leans on."
+        f" only {apart} above, and {known} not known to within 5 %. Choose by what each leans on."
         f" There, {analysis(other.route, other.plan, effect)}. See it whole with --route"
         f" {other.route}."
     )

@@ -37,6 +37,18 @@ def money(amount: Fraction) -> str:
     return f"{rounded(amount, places):,.{places}f}"
 
 
+def exact_money(amount: Fraction) -> str:
+    """Return an amount with two decimals, or with as many more as it has, up to six.
+
+    Examples
+    --------
+    >>> exact_money(Fraction(1, 2)), exact_money(Fraction("0.375")), exact_money(Fraction(1234))
+    ('0.50', '0.375', '1,234.00')
+    """
+    places = next((n for n in range(2, 6) if (amount * 10**n).denominator == 1), 6)
+    return f"{rounded(amount, places):,.{places}f}"
+
+
 def price_of(amount: Fraction, currency: str) -> str:
     """Return an amount of money with its currency, where it has one.
 

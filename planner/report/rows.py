@@ -20,6 +20,7 @@ from planner.report.numbers import (
     at_least,
     at_most,
     exact,
+    exact_money,
     figure,
     money,
     percent,
@@ -187,7 +188,8 @@ def component_reason(name: str, buy: Buy, study: Study) -> str:
 def price_each(purchase: Purchase, study: Study) -> str:
     """Return what each unit costs, its burdens included; a batch beside it."""
     each = running_price(purchase, study.terms)
-    parts = [money(each)] if each else []
+    # To the last digit, so that units times price is what the line says.
+    parts = [exact_money(each)] if each else []
     if purchase.batch is not None:
         parts.append(f"{money(purchase.batch.price)} per {purchase.batch.holds}")
     return " + ".join(parts) or NOTHING
@@ -269,7 +271,9 @@ def route_row(
     bill = plan.buy.bill if plan else None
     return RouteRow(
         name=answer.route,
-        status="recommended" if is_recommended else STATUS_WORDS[answer.status],
+        status="recommended"
+        if is_recommended and len(study.routes) > 1
+        else STATUS_WORDS[answer.status],
         total=price_of(bill.total, study.currency) if bill else NOTHING,
         each=money(bill.next_unit) if bill else NOTHING,
         once=money(bill.setup) if bill else NOTHING,

@@ -37,7 +37,7 @@ PARTS = {
     "instrument": "instrument",
     "mediator": "mediators (the mechanism)",
     "covariate": "covariates (to adjust for)",
-    "extra": "extras (validity could do without any one of them)",
+    "extra": "extras (any one of them could go, not all)",
     "component": "components (shared costs)",
 }
 """The heading under which each part stands in the list of purchases, in this order."""
