@@ -107,7 +107,8 @@ def slope_range(
     """
     beta = xy / xx
     low, high = ranged(inverse, u, v - beta * u, blocks)
-    least = xx - np.sum((inverse @ u) * u, axis=0)
+    # With more than A⁻¹ nothing may be left.
+    least = np.maximum(xx - np.sum((inverse @ u) * u, axis=0), TINY * xx)
     return beta - high / least, beta - low / least
 
 

@@ -30,6 +30,8 @@ __all__ = ["Branching", "Node", "Search"]
 BEGINNINGS = 3
 """Roots from whose rounded drafts the search goes downhill before anything else."""
 IMPROVING_SHARE = 0.1
+MOST_FORCED = 80
+"""Candidates up to which it is asked for each whether anything does without."""
 TELL_AFTER = 100
 """Nodes between two words on how far the search has come."""
 
@@ -82,6 +84,10 @@ class Branching:
     def roots(self) -> Iterator[Node]:
         """Return the nodes on which treatment, outcome and instrument are decided."""
         space, claim = self.space, self.space.claim
+        # Without somebody essential, whom a limit may have taken away, there is nothing to decide.
+        able = claim.ends <= space.ways.keys()
+        if not able or space.route.criterion.opening(claim, self.measurable) is None:
+            return
         ends = [
             [(node, rank) for rank in range(len(space.ways[node]))]
             for node in (claim.treatment, claim.outcome)
@@ -139,7 +145,7 @@ class Branching:
 
         Further down there are fewer sets to choose from, so whoever is forced stays so.
         """
-        if node.open_mediators:
+        if node.open_mediators or len(self.covariates) > MOST_FORCED:
             return node
         asked = [each for each in among if each in node.undecided and each not in node.forced]
         found = {each for each in asked if not self.can_open(node, without=each)}
@@ -201,7 +207,8 @@ class Branching:
         """Say whether no plan below can keep the limits, whatever it costs."""
         demand = self.space.demand
         bias = max(floor.bias, floor.decided_bias + least_more(floor, basket))
-        if floor.is_dead or bias > demand.bias * (1 + 2 * FORGIVEN) + FORGIVEN:
+        is_out_of_reach = floor.is_dead and demand.records is None
+        if is_out_of_reach or bias > demand.bias * (1 + 2 * FORGIVEN) + FORGIVEN:
             return True
         if demand.records is None:
             return False
@@ -397,15 +404,15 @@ class Search:
         best = serves(high)
         if best is None:
             return None
-        low = max(at_least, high * 1e-6)
-        for _ in range(12):
+        low, proved = max(at_least, min(high * 1e-6, 1e-9)), at_least
+        for _ in range(16):
             middle = (low * high) ** 0.5
             found = serves(middle)
             if found is None:
-                low = middle
+                low = proved = middle
             else:
                 high, best = middle, found
-        return Bound(max(low, at_least), best.choice)
+        return Bound(proved, best.choice)
 
     # --------------------------------------------------------------------------------- search
 
@@ -419,19 +426,19 @@ class Search:
         """
         queue, told = Queue(), 0
         for branching in branchings:
-            self.push(queue, branching, branching.roots())
+            if not self.push(queue, branching, branching.roots()):
+                return 0.0
         for branching, node in queue.lowest(BEGINNINGS):
             if node.rounded is not None:
                 self.improve(branching.space, node.rounded)
         while queue.entries and queue.bound <= self.cutoff:
-            if not self.deadline.left:
-                return queue.bound
             if self.nodes - told >= TELL_AFTER:
                 told = self.nodes
                 self.tell(self.progress(queue.bound))
+            bound, best = queue.bound, self.best
             branching, node = queue.pop()
-            best = self.best
-            self.push(queue, branching, branching.children(node))
+            if not self.push(queue, branching, branching.children(node)):
+                return bound
             if self.best is not None and self.best is not best:
                 self.improve(self.best[0], self.best[1].draft)
         return inf
@@ -443,9 +450,17 @@ class Search:
         gap = max(0.0, 1 - bound / float(self.best[1].score))
         return f"{float(self.best[1].bill.total):,.2f} so far, at most {gap:.1%} from the best"
 
-    def push(self, queue: "Queue", branching: Branching, nodes: Iterable[Node]) -> None:
-        """Put nodes into the queue, as far as they can lead to anything; look at leaves at once."""
+    def push(self, queue: "Queue", branching: Branching, nodes: Iterable[Node]) -> bool:
+        """Put nodes into the queue, as far as they can lead to anything; look at leaves at once.
+
+        Returns
+        -------
+        bool
+            False if the time was over before all of them were looked at.
+        """
         for each in nodes:
+            if not self.deadline.left:
+                return False
             node = branching.bounded(each, self)
             self.nodes += 1
             if node is None:
@@ -454,6 +469,7 @@ class Search:
                 queue.push(branching, node)
             elif branching.space.is_valid(node.roles):
                 self.offer(branching.space, Draft.of(node.roles, dict(node.ways)))
+        return True
 
     def improve(self, space: Space, draft: Draft) -> None:
         """Look for a better study downhill of a draft, in a tenth of the time that is left."""

@@ -1,21 +1,22 @@
 """What no study below a node of the search can cost less than.
 
-With c = records − measured − 1 the core of the number of records, I bought and R undecided, a study
-that takes option k_j for each j ∈ R comes to at least
+With n records, I bought and R undecided, a study that takes option k_j for each j ∈ R comes to at
+least
 
-    bought(c) + Σ_j cost_jk(c),    where    c ≥ κ² · (V / keep²)(N),   N = N₀ + Σ_j gain_jk,
+    bought(n) + Σ_j cost_jk(n),    where    c ≥ κ² · (V / keep²)(N),   N = N₀ + Σ_j gain_jk,
 
-κ² being design effect · K². For λ ≥ 0 and μ ≥ 0 the inequality is weakened to
+κ² being design effect · K², and c the core of n: without degrees of freedom, one of which goes to
+each j that is taken in. For λ ≥ 0 and μ ≥ 0 the inequality is weakened to
 
-    bought(c) + λ (N₀ − room(c)) − μ · slack + Σ_j min_k (cost_jk(c) + λ gain_jk + μ bias_jk)  (1)
+    bought(n) + λ (N₀ − room(n)) − μ · slack + Σ_j min_k (cost_jk(n) + λ gain_jk + μ bias_jk)  (1)
 
-with room(c) the largest N that c records serve, and slack what single readings may still add to the
-bias (Lagrange's relaxation, which falls apart into one choice for each j). The study is on *some*
-number of records, so the bound is the least over c of the largest over λ and μ. Where c can only be
-one of a few whole numbers each is looked at, counts and batches rounded up. Else c runs through
-intervals: without rounding, (1) is concave in c for fixed λ and μ (a sum of linear functions, of
-smallest ones of linear functions, and of −λ·room, where room is linear or its square), and least at
-one of the ends.
+with room(n) the largest N that n records serve (what a degree of freedom takes off it is counted
+among the gains), and slack what single readings may still add to the bias: Lagrange's relaxation,
+which falls apart into one choice for each j. The study is on *some* number of records, so the bound
+is the least over n of the largest over λ and μ. Where n can only be one of a few whole numbers each
+is looked at, counts and batches rounded up. Else n runs through intervals: without rounding, (1) is
+concave in n for fixed λ and μ (a sum of linear functions, of smallest ones of linear functions, and
+of −λ·room, where room is linear or a square), and least at one of the ends.
 """
 
 from collections.abc import Iterator
@@ -104,6 +105,8 @@ class Basket:
     """Of each option, with a share of every component that it needs and others may too."""
     per_unit: Floats
     allowed: np.ndarray
+    moves: np.ndarray
+    """Whether an option changes how many units are started for each record."""
 
     @classmethod
     def of(
@@ -146,7 +149,12 @@ class Basket:
         loss = options.loss[at] + needs @ (till.loss * share)
         per_unit = options.per_unit[at] + needs @ (till.per_unit * share) + loss * each_unit
         return cls(
-            bought=bought, measured=measured, setup=setup, per_unit=per_unit, allowed=allowed
+            bought=bought,
+            measured=measured,
+            setup=setup,
+            per_unit=per_unit,
+            allowed=allowed,
+            moves=loss > 0,
         )
 
 
@@ -175,123 +183,124 @@ def least_total(
     if not basket.allowed.any(axis=1).all():
         return Bound(inf, nothing)
     if space.demand.records is not None:
-        cores = np.array([float(space.demand.records - basket.measured - 1)])
-        return Relaxation.of(space, floor, basket, cores, exactly=True).least(None)
+        held = np.array([float(space.demand.records)])
+        return Relaxation.of(space, floor, basket, held, exactly=True).least(None)
     assert reach is not None, "how good the estimate has to be is given"
     scale = space.design_effect * reach**2
-    first, extra = first_core(space, floor, basket, scale)
+    first, does_count = first_records(space, floor, basket, scale)
     if first > MOST_RECORDS:
         return Bound(inf, nothing)
     most = floor.least + float(np.where(basket.allowed, floor.increments, 0).max(axis=1).sum())
-    last = max(first, np.ceil(scale * floor.variance(most) * (1 - SAFE)))
-    final = last
-    last = max(first, min(last, affordable(space, basket, cutoff)))
+    core = float(np.ceil(scale * floor.variance(most) * (1 - SAFE)))
+    final = max(first, core + basket.measured + 1 + does_count * len(nothing))
+    last = max(first, min(final, affordable(space, basket, cutoff)))
     few = bool(last - first < FEW)
-    cores = np.arange(first, last + 1) if few else np.geomspace(first, last, FEW)
-    relaxation = Relaxation.of(space, floor, basket, cores, exactly=few, extra=extra)
-    found = [relaxation.least(form) for form in forms(floor, cores, scale)]
+    records = np.arange(first, last + 1) if few else np.geomspace(first, last, FEW)
+    relaxation = Relaxation.of(space, floor, basket, records, exactly=few)
+    cores = records - basket.measured - 1
+    found = [
+        relaxation.least(form) for form in forms(floor, cores, scale, len(nothing) * does_count)
+    ]
     best = max(found, key=lambda bound: bound.total)
-    # From the final core on nobody is taken in for the sake of N.
-    records = np.array([final + basket.measured + 1])
-    if best.total <= float(space.till.total(basket.bought, records)[0]) * (1 - SAFE):
+    # From the final number of records on nobody is taken in for the sake of N.
+    ends = np.array([final])
+    if best.total <= float(space.till.total(basket.bought, ends)[0]) * (1 - SAFE):
         return best
-    ends = Relaxation.of(space, floor, basket, np.array([final]), exactly=True).least(None)
-    return min(best, ends, key=lambda bound: bound.total)
+    beyond = Relaxation.of(space, floor, basket, ends, exactly=True).least(None)
+    return min(best, beyond, key=lambda bound: bound.total)
 
 
 @dataclass(frozen=True, slots=True)
 class Form:
-    """One form of the bound on V / keep², by core."""
+    """One form of the bound on V / keep², by number of records."""
 
     room: Floats
     """What N may grow by."""
     widening: Floats
     """By how much one more record widens it."""
+    taken: Floats
+    """By how much whoever is taken in narrows it, since he takes a degree of freedom."""
 
 
-def forms(floor: Floor, cores: Floats, scale: float) -> Iterator[Form]:
-    """Return the linear form and that of the square root, as far as they say anything."""
+def forms(floor: Floor, cores: Floats, scale: float, most: int) -> Iterator[Form]:
+    """Return the linear form and that of the square root, as far as they say anything.
+
+    Parameters
+    ----------
+    most
+        How many may be taken in; 0 where that does not count. With t of them the core is c − t, and
+        (c − t)² ≤ c² − t · (2c − most).
+    """
     if floor.gamma > 0:
+        wide = np.full(len(cores), 1 / (scale * floor.gamma))
         room = (cores / scale - floor.alpha) / floor.gamma
-        yield Form(room - floor.least, np.full(len(cores), 1 / (scale * floor.gamma)))
+        yield Form(room - floor.least, wide, wide if most else 0 * wide)
     if floor.kappa > 0:
-        room = (cores / scale / floor.kappa) ** 2
-        yield Form(room - floor.least, 2 * cores / (scale * floor.kappa) ** 2)
+        unit = (scale * floor.kappa) ** 2
+        taken = np.maximum(2 * cores - most, 0) / unit if most else 0 * cores
+        yield Form(cores**2 / unit - floor.least, 2 * np.maximum(cores, 1) / unit, taken)
 
 
-def first_core(space: Space, floor: Floor, basket: Basket, scale: float) -> tuple[float, bool]:
-    """Return the least core, and whether one more variable takes one more record.
+def first_records(space: Space, floor: Floor, basket: Basket, scale: float) -> tuple[float, bool]:
+    """Return the least number of records, and whether it grows with the number of variables.
 
-    It does not where something else decides on the number of records.
+    It does not where something else decides on it.
     """
     core = float(np.ceil(scale * floor.variance(max(floor.least, 0.0)) * (1 - SAFE)))
+    records = max(core, 1.0) + basket.measured + 1
     least = float(space.demand.at_least)
     if floor.strongest is not None and space.demand.least_f and floor.strongest > 0:
         asked = space.demand.least_f * space.design_effect / floor.strongest
         least = max(least, float(np.ceil(asked * (1 - SAFE))))
-    if least - basket.measured - 1 > core:
-        return least - basket.measured - 1, False
-    return max(core, 1.0), True
+    return (least, False) if least > records else (records, True)
 
 
 def affordable(space: Space, basket: Basket, cutoff: float) -> float:
-    """Return the core beyond which what is bought alone reaches the cutoff."""
+    """Return the number of records beyond which what is bought alone reaches the cutoff."""
     per_unit = float(space.till.per_unit[basket.bought].sum())
     if cutoff == inf or not per_unit:
         return inf
     setup = float(space.till.setup[basket.bought].sum())
     kept = space.till.kept(basket.bought)
-    return float(np.ceil((cutoff - setup) / per_unit * kept)) - basket.measured
+    return float(np.ceil((cutoff - setup) / per_unit * kept)) + 1
 
 
 @dataclass(frozen=True, kw_only=True, slots=True)
 class Relaxation:
-    """(1) for some cores, ready for any λ and μ."""
+    """(1) for some numbers of records, ready for any λ and μ."""
 
     fixed: Floats
-    """By core."""
+    """By number of records."""
     slope: float
     """What one more record costs."""
     costs: Floats
-    """By core, candidate and option; ∞ for what is not allowed."""
+    """By number of records, candidate and option; ∞ for what is not allowed."""
     gains: Floats
     biases: Floats | None
     """What each option adds to the bias; None where that is of no interest."""
     slack: float
     """What the bias may grow by."""
     exactly: bool
-    """Each core by itself, counts and batches rounded up; else intervals between them."""
+    """Each number by itself, counts and batches rounded up; else intervals between them."""
 
     @classmethod
     def of(
-        cls,
-        space: Space,
-        floor: Floor,
-        basket: Basket,
-        cores: Floats,
-        *,
-        exactly: bool,
-        extra: bool = False,
+        cls, space: Space, floor: Floor, basket: Basket, records: Floats, *, exactly: bool
     ) -> "Relaxation":
-        """Return what (1) is made of.
-
-        Parameters
-        ----------
-        extra
-            Whether whoever is taken in takes one more record.
-        """
+        """Return what (1) is made of."""
         till, bought = space.till, basket.bought
         kept = till.kept(bought)
         slope = float(till.per_unit[bought].sum()) / kept
-        records = cores + basket.measured + 1
         costs = basket.setup + basket.per_unit * (records / kept)[:, None, None]
-        if extra:
-            costs[:, :, 1:] += slope
+        fixed: Floats = float(till.setup[bought].sum()) + slope * records
+        if exactly:
+            # What rounding up adds is sure only while the number of units started stays the same.
+            rounded = till.total(bought, records)
+            costs -= (rounded - fixed)[:, None, None] * basket.moves
+            fixed = rounded
         biases = None if floor.more_bias is None else np.where(basket.allowed, floor.more_bias, 0)
         return cls(
-            fixed=till.total(bought, records)
-            if exactly
-            else float(till.setup[bought].sum()) + slope * records,
+            fixed=fixed,
             slope=slope,
             costs=np.where(basket.allowed, costs, inf),
             gains=np.where(basket.allowed, floor.increments, 0),
@@ -308,59 +317,57 @@ class Relaxation:
         form
             What N may grow by; None where N is of no interest.
         """
-        cores = len(self.fixed)
-        room = np.zeros(cores) if form is None else form.room
-        prices = np.zeros((cores, 1))
-        if form is not None:
+        nothing = np.zeros(len(self.fixed))
+        prices = nothing[:, None]
+        if form is None:
+            form = Form(nothing, nothing, nothing)
+        else:
             prices = (self.slope / form.widening)[:, None] * MULTIPLES
-        per_core = self.by_core(prices, 0.0, room)
-        rates: Floats | float = 0.0
+        rates: Floats = np.zeros(1)
+        bounds = self.bounds(prices, rates, form)
         if self.biases is not None:
-            best = per_core.argmax(axis=1)
+            best = bounds.argmax(axis=1)
             best = best if self.exactly else np.append(best, best[-1])
             prices = np.take_along_axis(prices, best[:, None], axis=1)
             prices = np.repeat(prices, len(BIAS_PRICES), axis=1)
             rates = self.worth_of_bias() * BIAS_PRICES
-            per_core = self.by_core(prices, rates, room)
-        largest = per_core.max(axis=1)
+            bounds = self.bounds(prices, rates, form)
+        largest = bounds.max(axis=1)
         at = int(largest.argmin())
-        total = float(largest[at])
-        best_price = int(per_core[at].argmax())
-        rate = rates if isinstance(rates, float) else float(rates[best_price])
-        charged = self.charged(np.array([at]), prices[at : at + 1, best_price, None], rate)
+        total, best_price = float(largest[at]), int(bounds[at].argmax())
+        rate = rates if len(rates) == 1 else rates[best_price, None]
+        charged = self.charged(np.array([at]), prices[at : at + 1, best_price, None], rate, form)
         return Bound(total * (1 - SAFE) if total > 0 else 0.0, charged[0, 0].argmin(axis=1))
 
-    def by_core(self, prices: Floats, rates: Floats | float, room: Floats) -> Floats:
-        """Return (1) for each core, or for each interval at its worse end."""
-        cores = np.arange(len(self.fixed))
-        values = self.values(cores, prices, rates, room)
+    def bounds(self, prices: Floats, rates: Floats, form: Form) -> Floats:
+        """Return (1) for each number of records, or for each interval at its worse end."""
+        every = np.arange(len(self.fixed))
+        values = self.values(every, prices, rates, form)
         if self.exactly:
             return values
-        right = self.values(cores[1:], prices[:-1], rates, room)
+        right = self.values(every[1:], prices[:-1], rates, form)
         worse: Floats = np.minimum(values[:-1], right)
         return worse
 
-    def values(
-        self, cores: np.ndarray, prices: Floats, rates: Floats | float, room: Floats
-    ) -> Floats:
-        """Return (1): cores × pairs of λ and μ."""
-        charged = self.charged(cores, prices, rates)
+    def values(self, at: np.ndarray, prices: Floats, rates: Floats, form: Form) -> Floats:
+        """Return (1) for some numbers of records: numbers × pairs of λ and μ."""
+        charged = self.charged(at, prices, rates, form)
         slack = self.slack if self.biases is not None else 0.0
         found: Floats = (
             charged.min(axis=3).sum(axis=2)
-            + self.fixed[cores, None]
-            - prices * room[cores, None]
+            + self.fixed[at, None]
+            - prices * form.room[at, None]
             - rates * slack
         )
         return found
 
-    def charged(self, cores: np.ndarray, prices: Floats, rates: Floats | float) -> Floats:
-        """Return cost + λ · gain + μ · bias: cores × pairs × candidates × options."""
-        charged = self.costs[cores, None] + self.gains * prices[:, :, None, None]
+    def charged(self, at: np.ndarray, prices: Floats, rates: Floats, form: Form) -> Floats:
+        """Return cost + λ · gain + μ · bias: numbers × pairs × candidates × options."""
+        charged: Floats = self.costs[at, None] + self.gains * prices[:, :, None, None]
+        charged[..., 1:] += (prices * form.taken[at, None])[:, :, None, None]
         if self.biases is not None:
-            charged = charged + self.biases * np.atleast_1d(rates)[:, None, None]
-        found: Floats = charged
-        return found
+            charged = charged + self.biases * rates[:, None, None]
+        return charged
 
     def worth_of_bias(self) -> float:
         """Return what an option costs at most, over what it adds to the bias at most."""

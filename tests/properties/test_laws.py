@@ -11,8 +11,8 @@ import pytest
 from planner import read_study, recommend
 from tests.random_studies import random_study, sized_study, text_of
 
-SEEDS = range(1000, 1060)
-SIZED_SEEDS = range(700, 724)
+SEEDS = range(1000, 1040)
+SIZED_SEEDS = range(700, 706)
 
 
 def totals(study: dict[str, Any], write: Callable[..., Path]) -> dict[str, Fraction | None]:
@@ -45,7 +45,7 @@ def test_a_dearer_price_never_makes_a_cheaper_plan(part: str, write: Callable[..
             after = totals(dearer, write)
             assert never_less(after, before), (seed, part)
             changed += after != before
-    assert changed > 20
+    assert changed > 12
 
 
 def find(copy: dict[str, Any], study: dict[str, Any], entry: dict[str, Any]) -> dict[str, Any]:
@@ -69,7 +69,7 @@ def test_one_more_measurable_variable_never_makes_a_dearer_plan(write: Callable[
             after = totals(more, write)
             assert never_less(before, after), (seed, name)
             helped += after != before
-    assert helped > 5
+    assert helped > 3
 
 
 def test_the_same_study_gives_the_same_answer_in_any_order(write: Callable[..., Path]) -> None:
@@ -111,7 +111,7 @@ def test_a_dearer_price_never_makes_a_cheaper_study(write: Callable[..., Path]) 
             after = totals(dearer, write)
             assert never_less(after, before), seed
             changed += after != before
-    assert changed > 10
+    assert changed > 4
 
 
 def find_in(copy: dict[str, Any], study: dict[str, Any], entry: dict[str, Any]) -> dict[str, Any]:
@@ -136,7 +136,7 @@ def test_a_looser_tolerance_never_makes_a_dearer_study(write: Callable[..., Path
             after = totals(study | {"tolerance": strict}, write)
             assert never_less(after, before), (seed, strict)
             changed += after != before
-    assert changed > 10
+    assert changed > 4
 
 
 def test_one_more_measurable_variable_never_makes_a_dearer_study(
@@ -167,7 +167,7 @@ def test_more_power_is_never_cheaper(write: Callable[..., Path]) -> None:
         after = totals(study | {"size": {"detect": "implied", "power": 0.9}}, write)
         assert never_less(after, before), seed
         changed += after != before
-    assert changed > 8
+    assert changed > 1
 
 
 def test_a_narrower_interval_is_never_cheaper(write: Callable[..., Path]) -> None:
@@ -178,7 +178,7 @@ def test_a_narrower_interval_is_never_cheaper(write: Callable[..., Path]) -> Non
         after = totals(study | {"size": {"half_width": 0.15}}, write)
         assert never_less(after, before), seed
         changed += after != before
-    assert changed > 8
+    assert changed > 1
 
 
 def test_a_shorter_search_brackets_the_optimum(write: Callable[..., Path]) -> None:
@@ -197,4 +197,4 @@ def test_a_shorter_search_brackets_the_optimum(write: Callable[..., Path]) -> No
                     assert each.plan.buy.lower_bound <= optimum, (seed, each.route)
                     assert each.plan.buy.bill.total >= optimum, (seed, each.route)
                     cut_short += not each.plan.buy.proved
-    assert cut_short > 3
+    assert cut_short > 1
