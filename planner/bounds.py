@@ -9,9 +9,10 @@ from functools import cached_property
 from math import inf, sqrt
 
 import numpy as np
+from numpy.typing import NDArray
 
 from planner.precision import Matrix, Parts, partial
-from planner.ranges import TINY, Blocks, Vector, distances, ranged, slope_range
+from planner.ranges import TINY, Blocks, Vector, ranged, slope_range
 
 __all__ = [
     "Basis",
@@ -21,6 +22,7 @@ __all__ = [
     "View",
     "one_noisy",
     "summed",
+    "with_rest",
 ]
 
 CLOSED = 1e-9
@@ -165,6 +167,16 @@ class View:
         changed = np.abs(self.s[:, self.first :, self.first :] - block).sum(axis=2) > TINY
         return Blocks.of(block, changed.T)
 
+    def joined(self, x: int, y: int, slope: float) -> Vector:
+        """Return how far each of R may move the slope of y on x, as a share of it (first case).
+
+        Whoever is related to both ends does, to x and to what the slope leaves of y.
+        """
+        left = self.on(y)[:, 0] - slope * self.on(x)[:, 0]
+        size = np.diagonal(self.s[0])[self.first :] + TINY
+        found = np.abs(self.on(x)[:, 0] * left) / size
+        return np.asarray(found / (abs(slope) * self.of(x, x)[0] + TINY))
+
     def taken(self, u: Matrix, v: Matrix) -> tuple[Vector, Vector]:
         """Return between which numbers what R takes out of a covariance lies, in each case."""
         return ranged(self.inverse, u, v, self.blocks)
@@ -304,6 +316,23 @@ def readings(sight: Sight, basis: Basis) -> list[Reading]:
     return [each for each in found if 0 < each.error < inf]
 
 
+def with_rest(decided: float, together: tuple[float, float], sums: tuple[float, float]) -> float:
+    """Return a bound on the bias bound that counts what single readings do not explain.
+
+    With s_j what each reading causes alone and d all of them together, the bias bound is
+    Σ|s_j| + |d − Σ s_j|. Whatever undecided readings add to the second sum they add to the first,
+    so that it is at least Σ|s_j| + |d − Σ s_j| over the decided ones.
+
+    Parameters
+    ----------
+    decided
+        Σ|s_j| over decided readings at least.
+    together, sums
+        Between which numbers d lies, and Σ s_j over decided readings.
+    """
+    return decided + max(0.0, together[0] - sums[1], sums[0] - together[1])
+
+
 def summed(
     each: Vector, owners: Sequence[int], options: Sequence[int], shape: tuple[int, ...]
 ) -> tuple[float, Matrix]:
@@ -370,10 +399,14 @@ class Shifts:
         )
 
     def slopes(self, mix: Vector) -> tuple[Vector, Vector]:
-        """Return between which sizes the slope of a combination of the ends on w lies."""
+        """Return between which numbers the slope of a combination of the ends on w lies."""
         v = np.tensordot(mix, self.others, axes=1)
-        low, high = slope_range(self.inverse, self.u, v, self.ww, mix @ self.ends, self.blocks)
-        return distances(low, high, 0.0), np.maximum(np.abs(low), np.abs(high))
+        return slope_range(self.inverse, self.u, v, self.ww, mix @ self.ends, self.blocks)
+
+    @property
+    def decided(self) -> NDArray[np.bool_]:
+        """Which cases speak of a reading that is decided."""
+        return np.array([case.owner < 0 for case in self.cases], dtype=bool)
 
     @property
     def factors(self) -> tuple[Vector, Vector]:

@@ -19,7 +19,7 @@ __all__ = ["demand_of", "exceeded", "limits_of", "within_limits"]
 
 ANY_WIDTH = 1e-9
 """A K that asks for nothing."""
-MOST_MODELLED = 2_000
+MOST_MODELLED = 400
 """Variables up to which precision is worked out where the number of records is given."""
 
 

@@ -84,7 +84,8 @@ class Exceeded:
     """A limit that is in the way."""
 
     limit: str
-    """``budget``, ``frame_size``, ``least_reliability`` or ``burdens.NAME``."""
+    """``budget``, ``frame_size``, ``least_reliability``, ``bias``, ``first_stage_F``, ``records``
+    or ``burdens.NAME``."""
     allowed: Fraction
     needed: Fraction
     proved: bool = True
@@ -228,13 +229,13 @@ def plan_values(plan: Plan, route: str, effect: Effect, study: Study) -> dict[st
 
 
 def precision_values(plan: Plan) -> dict[str, object]:
-    """Return what a plan achieves; a half-width without end is null."""
+    """Return what a plan achieves; a half-width or a variance without end is null."""
     precision = plan.precision
     assert precision is not None, "precision was worked out"
     values: dict[str, object] = {
         "effect": precision.effect,
         "limit": precision.limit,
-        "variance": precision.variance,
+        "variance": precision.variance if isfinite(precision.variance) else None,
         "bias_bound": precision.bias_bound,
         "bias_sources": dict(precision.bias_sources),
         "half_width": precision.half_width if isfinite(precision.half_width) else None,

@@ -31,6 +31,7 @@ __all__ = [
     "increments",
     "product_ranges",
     "ranged",
+    "sizes",
     "slope_range",
 ]
 
@@ -82,7 +83,9 @@ def ranged(inverse: Matrix, u: Matrix, v: Matrix, blocks: Blocks) -> tuple[Vecto
     both = blocks.sums(left * v)
     squares = blocks.sums(left * u) * blocks.sums((inverse @ v) * v)
     bound = np.sqrt(np.maximum(squares, 0))
-    return ((both - bound) / 2).sum(axis=0), ((both + bound) / 2).sum(axis=0)
+    low, high = ((both - bound) / 2).sum(axis=0), ((both + bound) / 2).sum(axis=0)
+    # Nothing at all may be taken out; rounding must not rule that out.
+    return np.minimum(low, 0.0), np.maximum(high, 0.0)
 
 
 def slope_range(
@@ -134,6 +137,11 @@ def product_ranges(
     """Return between which numbers the products of two numbers lie."""
     ends = np.array([a * b for a in one for b in other])
     return ends.min(axis=0), ends.max(axis=0)
+
+
+def sizes(low: Vector, high: Vector) -> tuple[Vector, Vector]:
+    """Return between which sizes numbers in some ranges lie."""
+    return distances(low, high, 0.0), np.maximum(np.abs(low), np.abs(high))
 
 
 def distances(low: Vector, high: Vector, value: float) -> Vector:

@@ -322,8 +322,8 @@ class Search:
         score = float(settled.score)
         if space.demand.spend is not None:
             return score * (1 + FORGIVEN if self.ties else 1 - FORGIVEN)
-        # Totals differ by at least a millionth, and by far less than a bound is lowered by.
-        return score * (1 + FORGIVEN) if self.ties else score - 1e-7
+        # What is cheaper is so by the grid of money at least.
+        return score * (1 + FORGIVEN) if self.ties else score - 0.99 * space.grid
 
     def offer(self, space: Space, draft: Draft) -> None:
         """Take a valid draft as the best study, if it is within all limits and better."""

@@ -29,7 +29,7 @@ from costs.prices import MOST_RECORDS
 from planner.bounds import Floor
 from planner.joint.space import Space
 from planner.joint.till import Floats
-from planner.precision import FORGIVEN
+from planner.precision import FORGIVEN, ROUNDING
 
 __all__ = ["Basket", "Bound", "Options", "Relaxation", "least_total"]
 
@@ -39,7 +39,7 @@ MULTIPLES = np.array([0.0, 0.35, 0.6, 0.8, 1.0, 1.25, 1.6, 2.2, 3.5])
 """λ as multiples of what one unit of N costs in records."""
 BIAS_PRICES = np.array([0.0, 0.02, 0.06, 0.15, 0.3, 0.5, 0.8, 1.3, 2.5, 6.0])
 """μ as multiples of what an option costs at most, over what it adds to the bias at most."""
-SAFE = 1e-8
+SAFE = 1e-9
 """Bounds are lowered by this part of themselves: more than all rounding errors together."""
 
 
@@ -140,7 +140,7 @@ class Basket:
         limits = np.array(list(space.limits.values()))
         if len(limits):
             more = needs @ space.takes + options.takes[at]
-            allowed &= (taken + more <= limits * (1 + 1e-9)).all(axis=2)
+            allowed &= (taken + more <= limits * (1 + FORGIVEN)).all(axis=2)
         allowed[:, 0] = ~np.array(forced, dtype=bool)
         users = (needs & allowed[:, :, None]).any(axis=1).sum(axis=0)
         share = 1 / np.maximum(users, 1)
@@ -237,7 +237,7 @@ def forms(floor: Floor, cores: Floats, scale: float, most: int) -> Iterator[Form
         yield Form(room - floor.least, wide, wide if most else 0 * wide)
     if floor.kappa > 0:
         unit = (scale * floor.kappa) ** 2
-        taken = np.maximum(2 * cores - most, 0) / unit if most else 0 * cores
+        taken = (2 * cores - most) / unit if most else 0 * cores
         yield Form(cores**2 / unit - floor.least, 2 * np.maximum(cores, 1) / unit, taken)
 
 
@@ -298,14 +298,17 @@ class Relaxation:
             rounded = till.total(bought, records)
             costs -= (rounded - fixed)[:, None, None] * basket.moves
             fixed = rounded
-        biases = None if floor.more_bias is None else np.where(basket.allowed, floor.more_bias, 0)
+        biases = None
+        if floor.more_bias is not None:
+            is_some = basket.allowed & (floor.more_bias > ROUNDING)
+            biases = np.where(is_some, floor.more_bias, 0)
         return cls(
             fixed=fixed,
             slope=slope,
             costs=np.where(basket.allowed, costs, inf),
             gains=np.where(basket.allowed, floor.increments, 0),
             biases=biases if biases is not None and biases.any() else None,
-            slack=space.demand.bias * (1 + FORGIVEN) - floor.decided_bias,
+            slack=space.demand.bias * (1 + 2 * FORGIVEN) + FORGIVEN - floor.decided_bias,
             exactly=exactly,
         )
 

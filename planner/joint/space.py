@@ -14,6 +14,7 @@ import numpy as np
 
 from costs.bill import Bill, bill_for
 from costs.prices import MOST_RECORDS, WayName
+from costs.tally import Tally
 from planner.claims import Claim, Roles
 from planner.joint.till import Till
 from planner.precision import (
@@ -71,7 +72,8 @@ class Settled:
     """What decides between two drafts: the score, money, fewer variables, smaller names."""
 
 
-@dataclass(frozen=True, kw_only=True, slots=False)
+# No slots: what is worked out once is kept beside the fields.
+@dataclass(frozen=True, kw_only=True)
 class Space:
     """One claim, and all that stays the same while its cheapest study is looked for."""
 
@@ -85,6 +87,8 @@ class Space:
     """The ways of each measurable node, better readings first, then smaller names."""
     noise: Mapping[int, tuple[float, ...]]
     """The error variance of each of them: 1/reliability − 1."""
+    grid: float
+    """Totals that differ, differ by this at least."""
     known: dict[Draft, Worth] = field(default_factory=dict)
     """What drafts have turned out to be worth."""
 
@@ -108,6 +112,7 @@ class Space:
             rows=rows,
             ways=ways,
             noise=noise,
+            grid=float(Tally.of(within.prices, within.terms).unit * within.terms.surcharge),
         )
 
     @cached_property
@@ -341,7 +346,7 @@ class Space:
 
         low, high = measured + 1, measured + 2
         while high <= MOST_RECORDS and fits(high):
-            low, high = high, 2 * high
+            low, high = high, min(2 * high, MOST_RECORDS + 1)
         while high - low > 1:
             middle = (low + high) // 2
             low, high = (middle, high) if fits(middle) else (low, middle)

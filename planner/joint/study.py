@@ -3,9 +3,10 @@
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
-from math import inf
+from math import inf, prod
 
 from costs.bill import Bill
+from costs.prices import MOST_RECORDS
 from planner.claims import Claim, Roles
 from planner.deadline import Deadline, Tell, tell_nobody
 from planner.joint.branch import Branching, Search
@@ -22,6 +23,8 @@ EXACT_TIES = 12
 """Up to so many measurable variables ties are resolved to the last name."""
 OPENING_SHARE = 0.25
 """The part of the time that may go into a study to begin with."""
+SMALL = 20_000
+"""Ways of measuring everything or leaving it out, up to which the search needs no opening."""
 GUESSED_RECORDS = 400
 """For the integer program, where nothing better is known."""
 
@@ -89,13 +92,19 @@ def opening_drafts(
             if records is None and space.demand.reach is not None:
                 records = space.records(space.estimate(draft), len(draft.ways))
             yield draft, space
-    if hint is None:
+    if hint is None and any(is_large(space) for space in spaces.values()):
         hint = asked(spaces, within, records or GUESSED_RECORDS, deadline)
     if hint is not None:
         for claim, roles in hint.opened:
             if claim.route in spaces:
                 space = spaces[claim.route]
                 yield draft_of(space, roles, dict(hint.bill.ways)), space
+
+
+def is_large(space: Space) -> bool:
+    """Say whether the integer program is worth its while: it takes as long as some 50 nodes."""
+    sets = prod(1 + len(ways) for ways in space.ways.values())
+    return sets > SMALL
 
 
 def asked(
@@ -174,7 +183,7 @@ def saved(space: Space, settled: Settled, without: Draft) -> Fraction | None:
         return None
     estimate, measured = space.estimate(without), len(without.ways)
     core = space.core(estimate, 1.0) / float(settled.score)
-    if core > 1e9:
+    if core > MOST_RECORDS:
         return None
     records = max(forgiving_ceil(core) + measured + 1, space.least_records(estimate))
     return space.bill(without, records).total - settled.bill.total

@@ -28,9 +28,9 @@ These add up to a bound on the bias bound; the distance of the range of (2) from
 
 import numpy as np
 
-from planner.bounds import Basis, Floor, Shifts, Sight, View
+from planner.bounds import Basis, Floor, Shifts, Sight, View, with_rest
 from planner.precision import Matrix, keep_of
-from planner.ranges import distances, increments
+from planner.ranges import distances, increments, product_ranges, sizes
 
 __all__ = ["floor"]
 
@@ -47,16 +47,17 @@ def floor(sight: Sight) -> Floor:
     inverse, c = given_x.inverse, given_x.on(Y)[:, 0]
     b = inverse @ c
     basis = Basis.of(sight)
-    decided, more = single_biases(sight, basis)
+    together = (float(low) - sight.effect, float(high) - sight.effect)
+    bias, decided, more = biases(sight, basis, together)
     return Floor(
         least=float(given_x.of(Y, Y)[0] - c @ b),
         increments=increments(b, inverse, view.worse),
         gamma=steepest(view, sight.effect, error, keep),
         is_dead=not keep,
-        bias=float(distances(low, high, sight.effect)) / abs(sight.effect),
+        bias=bias,
         decided_bias=decided,
         more_bias=more,
-        related=view.shares(X),
+        related=np.maximum(0.1 * view.shares(X), view.joined(X, Y, sight.effect)),
         closing=basis.closing(sight, np.array([1.0, 0.0]), np.array([-sight.effect, 1.0])),
     )
 
@@ -77,16 +78,42 @@ def steepest(view: View, effect: float, error: float, keep: float) -> float:
     return max(plain, effect**2 * xx / (size * s + rho) ** 2)
 
 
-def single_biases(sight: Sight, basis: Basis) -> tuple[float, Matrix | None]:
-    """Return (3) for what is decided, and (4) for each option of R, as shares of the effect."""
+def biases(
+    sight: Sight, basis: Basis, together: tuple[float, float]
+) -> tuple[float, float, Matrix | None]:
+    """Return bounds on the bias bound, as shares of the effect.
+
+    Returns
+    -------
+    tuple
+        A bound for all below; (3) and (4) for what is decided; (4) for each option of R.
+    """
     if not sight.with_bias:
-        return 0.0, None
-    shifts = Shifts.of(sight, basis)
-    xx, effect = basis.t[X, X], sight.effect
-    x_least, x_most = shifts.slopes(np.array([1.0, 0.0]))
-    r_least, _ = shifts.slopes(np.array([-effect, 1.0]))
+        return 0.0, 0.0, None
+    shifts, effect, first = Shifts.of(sight, basis), sight.effect, basis.first
+    xx, u = float(basis.t[X, X]), basis.t[first:, X]
+    left = max(xx - float(u @ shifts.inverse @ u), 0.0)
+    x_slopes, r_slopes = (shifts.slopes(np.array(mix)) for mix in ([1.0, 0.0], [-effect, 1.0]))
+    x_least, x_most = sizes(*x_slopes)
     f_least, f_most = shifts.factors
-    each = f_least * x_least * r_least / (xx + f_most * x_most**2)
-    decided, more = shifts.summed(each / abs(effect), sight.worse.shape)
+    small, large = f_least / (xx + f_least * x_most**2), f_most / (left + f_most * x_least**2)
+    down, up = product_ranges(x_slopes, r_slopes)
+    lows = np.where(down > 0, small, large) * down
+    highs = np.where(up > 0, large, small) * up
+    each = distances(lows, highs, 0.0) / abs(effect)
+    decided, more = shifts.summed(each, sight.worse.shape)
     e = sight.noise[sight.parts.x]
-    return decided + e / (xx + e), more
+    own = sorted((-effect * e / (left + e), -effect * e / (xx + e))) if e else (0.0, 0.0)
+    decided += e / (xx + e)
+    sums = (
+        float(lows[shifts.decided].sum()) + own[0],
+        float(highs[shifts.decided].sum()) + own[1],
+    )
+    size = abs(effect)
+    rest = with_rest(decided * size, together, sums) / size
+    return max(rest, distance(together) / size), decided, more
+
+
+def distance(together: tuple[float, float]) -> float:
+    """Return how far a range is from 0."""
+    return max(0.0, together[0], -together[1])

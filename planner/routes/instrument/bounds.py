@@ -22,7 +22,7 @@ import numpy as np
 
 from planner.bounds import Basis, Floor, Shifts, Sight, View
 from planner.precision import Matrix, keep_of
-from planner.ranges import Blocks, Vector, distances, increments, ranged
+from planner.ranges import TINY, Blocks, Vector, distances, increments, ranged, sizes
 
 __all__ = ["floor"]
 
@@ -81,7 +81,7 @@ def effect_range(view: View) -> tuple[float, float, float, float]:
     zx, zy = float(view.of(Z, X)[0]), float(view.of(Z, Y)[0])
     low, high = (float(end[0]) for end in view.taken(q, u))
     nearest = max(0.0, zx - high, low - zx)
-    if nearest == 0.0:
+    if nearest <= TINY * float(view.of(X, X)[0] * view.of(Z, Z)[0]) ** 0.5:
         return 0.0, inf, -inf, inf
     beta = zy / zx
     low, high = (float(end[0]) for end in view.taken(q, v - beta * u))
@@ -111,9 +111,9 @@ def single_biases(sight: Sight, basis: Basis) -> tuple[float, Matrix | None]:
         Blocks.of(t[first:, first:], nobody),
     )
     zx = max(abs(t[Z, X] - low), abs(t[Z, X] - high))
-    z_least, z_most = shifts.slopes(np.array([0.0, 0.0, 1.0]))
-    r_least, _ = shifts.slopes(np.array([-effect, 1.0, 0.0]))
-    _, x_most = shifts.slopes(np.array([1.0, 0.0, 0.0]))
+    z_least, z_most = sizes(*shifts.slopes(np.array([0.0, 0.0, 1.0])))
+    r_least, _ = sizes(*shifts.slopes(np.array([-effect, 1.0, 0.0])))
+    _, x_most = sizes(*shifts.slopes(np.array([1.0, 0.0, 0.0])))
     f_least, f_most = shifts.factors
     reach = zx + f_most * z_most * x_most
     each = np.divide(f_least * z_least * r_least, reach, out=np.zeros_like(reach), where=reach > 0)

@@ -34,9 +34,9 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from planner.bounds import Basis, Floor, Sight, View, one_noisy, summed
+from planner.bounds import Basis, Floor, Sight, View, one_noisy, summed, with_rest
 from planner.precision import Matrix, keep_of
-from planner.ranges import TINY, Vector, distances, increments, product_ranges, slope_range
+from planner.ranges import Vector, distances, increments, product_ranges, slope_range
 
 __all__ = ["floor"]
 
@@ -62,7 +62,8 @@ def floor(sight: Sight) -> Floor:
     ranges = coefficients(view, given_x, errors)
     low, high = (end[0] for end in product_sums(*ranges))
     keep = max(keep_of(float(low), sight.effect), keep_of(float(high), sight.effect))
-    decided, more = single_biases(sight)
+    together = (float(low) - sight.effect, float(high) - sight.effect)
+    bias, decided, more = biases(sight, together)
     both = two_parts(view, given_x, keep), by_ratio(view, given_x, *ranges, sight.effect)
     alpha, gamma = max(both, key=lambda each: each[0] + each[1] * least)
     return Floor(
@@ -72,7 +73,7 @@ def floor(sight: Sight) -> Floor:
         gamma=gamma,
         kappa=kappa,
         is_dead=not keep,
-        bias=float(distances(low, high, sight.effect)) / abs(sight.effect),
+        bias=bias,
         decided_bias=decided,
         more_bias=more,
         related=np.maximum(0.1 * related, relations(view, given_x)),
@@ -84,10 +85,8 @@ def relations(view: View, given_x: View) -> Vector:
     found = []
     for m in range(FIRST, view.first):
         for seen, one, other in ((view, X, m), (given_x, m, Y)):
-            slope = seen.of(one, other)[0] / seen.of(one, one)[0]
-            left = seen.on(other)[:, 0] - slope * seen.on(one)[:, 0]
-            joined = np.abs(seen.on(one)[:, 0] * left) / (abs(seen.of(one, other)[0]) + TINY)
-            found.append(joined / (np.diagonal(seen.s[0])[seen.first :] + TINY))
+            slope = float(seen.of(one, other)[0] / seen.of(one, one)[0])
+            found.append(seen.joined(one, other, slope))
     return np.asarray(np.max(found, axis=0))
 
 
@@ -168,11 +167,22 @@ def two_parts(view: View, given_x: View, keep: float) -> tuple[float, float]:
     return first / keep**2, second / keep**2
 
 
-def single_biases(sight: Sight) -> tuple[float, Matrix | None]:
-    """Return (7) for what is decided, and for each option of R, as shares of the effect."""
+def biases(sight: Sight, together: tuple[float, float]) -> tuple[float, float, Matrix | None]:
+    """Return bounds on the bias bound, as shares of the effect.
+
+    Returns
+    -------
+    tuple
+        A bound for all below; (7) for what is decided; (7) for each option of R.
+    """
     if not sight.with_bias:
-        return 0.0, None
+        return 0.0, 0.0, None
     view, owners, options = one_noisy(sight, Basis.of(sight), [sight.parts.x, *sight.parts.m])
-    ranges = coefficients(view, view.given(X))
-    each = distances(*product_sums(*ranges), sight.effect) / abs(sight.effect)
-    return summed(each, owners, options, sight.worse.shape)
+    lows, highs = product_sums(*coefficients(view, view.given(X)))
+    size = abs(sight.effect)
+    each = distances(lows, highs, sight.effect) / size
+    decided, more = summed(each, owners, options, sight.worse.shape)
+    own = np.array(owners, dtype=int) < 0
+    sums = float((lows[own] - sight.effect).sum()), float((highs[own] - sight.effect).sum())
+    rest = with_rest(decided * size, together, sums) / size
+    return max(rest, together[0] / size, -together[1] / size), decided, more
