@@ -72,7 +72,9 @@ class Blocks:
 
     def sums(self, values: Matrix) -> Matrix:
         """Return sums over each block, and then over all that are one; columns are cases."""
-        each = self.members @ values
+        each: Matrix = self.members @ values
+        if not self.joined.any():
+            return each
         whole = np.where(self.joined, each, 0).sum(axis=0, keepdims=True)
         return np.vstack([np.where(self.joined, 0, each), whole])
 

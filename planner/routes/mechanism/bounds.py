@@ -76,7 +76,7 @@ def floor(sight: Sight) -> Floor:
         bias=bias,
         decided_bias=decided,
         more_bias=more,
-        related=np.maximum(0.1 * related, relations(view, given_x)),
+        related=relations(view, given_x),
     )
 
 
