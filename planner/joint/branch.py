@@ -230,8 +230,9 @@ class Branching:
     def next_of(self, node: Node, floor: Floor, basket: Basket) -> int | None:
         """Return what to decide next.
 
-        A mediator; a candidate that closes what is open; a component; whoever is forced; then the
-        candidate on which most hangs both ways, what is lost without and what it costs.
+        A mediator; a candidate that closes what is open; a component; then the candidate that
+        widens the ranges most, and a little by what would be lost without it: that much the
+        relaxation knows by itself.
         """
         if node.open_mediators:
             return node.open_mediators[0]
